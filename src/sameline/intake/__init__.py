@@ -1,0 +1,1 @@
+"""Files and forms in, checked runs out."""

@@ -1,0 +1,1 @@
+"""The tamper-evident ledger: bytes in, verdict out."""

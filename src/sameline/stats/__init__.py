@@ -1,0 +1,1 @@
+"""Statistics for comparing several groups: arrays in, frozen results out."""
