@@ -46,7 +46,9 @@ class FindingsError(SamelineError):
 
     exit_code = 1
 
-    def __init__(self, message: str, findings: list[str], *, where: str | None = None, advice: str | None = None) -> None:
+    def __init__(
+        self, message: str, findings: list[str], *, where: str | None = None, advice: str | None = None
+    ) -> None:
         super().__init__(message, where=where, advice=advice)
         self.findings = findings
 
