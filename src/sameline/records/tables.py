@@ -1,0 +1,390 @@
+"""The tables of a store, as SQLAlchemy Core sees them.
+
+Every table is insert only (the migrations install triggers that refuse anything else). Every row has an `id`, counted
+from 1 without gaps within its table, the `entry` that wrote it, and the `digest` of its canonical form. A correction
+is a new row that refers to the old one: a registered thing has one identity row and as many rows of particulars as
+there were changes, of which the last recorded holds.
+
+Truth values are 0 or 1 and moments are text (UTC, ISO 8601), so that a row reads the same, and hashes the same, from
+SQLite and from PostgreSQL.
+"""
+
+from __future__ import annotations
+
+from typing import Any
+
+from sqlalchemy import (
+    CheckConstraint,
+    Column,
+    Float,
+    ForeignKey,
+    Index,
+    Integer,
+    LargeBinary,
+    MetaData,
+    Table,
+    Text,
+    UniqueConstraint,
+)
+
+metadata = MetaData(
+    naming_convention={
+        "ix": "ix_%(table_name)s_%(column_0_N_name)s",
+        "uq": "uq_%(table_name)s_%(column_0_N_name)s",
+        "ck": "ck_%(table_name)s_%(constraint_name)s",
+        "fk": "fk_%(table_name)s_%(column_0_N_name)s",
+        "pk": "pk_%(table_name)s",
+    }
+)
+
+
+def _to(target: str) -> ForeignKey:
+    return ForeignKey(target)
+
+
+def _recorded(name: str, *parts: Any) -> Table:  # noqa: ANN401 - Column, Index or constraint, as Table takes them
+    """A table of recorded rows: identity, entry, digest, and what it is about."""
+    return Table(
+        name,
+        metadata,
+        Column("id", Integer, primary_key=True, autoincrement=False),
+        # deferrable, so that an act too large for memory may write its rows before its entry
+        Column("entry", Integer, ForeignKey("entry.number", deferrable=True, initially="IMMEDIATE"), nullable=False),
+        *parts,
+        Column("digest", LargeBinary, nullable=False),
+    )
+
+
+def _one_of(*columns: str) -> CheckConstraint:
+    """Exactly one of these columns has a value."""
+    filled = " + ".join(f"(CASE WHEN {column} IS NULL THEN 0 ELSE 1 END)" for column in columns)
+    return CheckConstraint(f"{filled} = 1", name="exactly_one")
+
+
+# -- the ledger ---------------------------------------------------------------------------------------------------
+
+entry = Table(
+    "entry",
+    metadata,
+    Column("number", Integer, primary_key=True, autoincrement=False),
+    Column("at", Text, nullable=False),
+    Column("person", Integer, ForeignKey("person.id", deferrable=True, initially="DEFERRED"), nullable=False),
+    Column("act", Text, nullable=False),
+    Column("reason", Text),
+    Column("rows", Text, nullable=False),  # for each table: first id, count, Merkle root of the rows (canonical JSON)
+    Column("prior", LargeBinary),  # digest of the entry before, none for the first
+    Column("software", Text, nullable=False),
+    Column("digest", LargeBinary, nullable=False),
+    Index(None, "person", "number"),
+    Index(None, "at"),
+)
+
+# The perfect subtrees of the ledger's Merkle tree, derived from the entries: an append and a proof read O(log n).
+tree_node = Table(
+    "tree_node",
+    metadata,
+    Column("level", Integer, primary_key=True, autoincrement=False),
+    Column("position", Integer, primary_key=True, autoincrement=False),
+    Column("hash", LargeBinary, nullable=False),
+)
+
+# -- what is registered -------------------------------------------------------------------------------------------
+
+laboratory = _recorded("laboratory", Column("name", Text, nullable=False), Column("zone", Text, nullable=False))
+
+# Entries name persons, so this table alone names its entry without a constraint: two tables cannot both come first.
+person = Table(
+    "person",
+    metadata,
+    Column("id", Integer, primary_key=True, autoincrement=False),
+    Column("entry", Integer, nullable=False),
+    Column("code", Text, nullable=False, unique=True),
+    Column("digest", LargeBinary, nullable=False),
+)
+person_particulars = _recorded(
+    "person_particulars",
+    Column("person", Integer, _to("person.id"), nullable=False, index=True),
+    Column("name", Text, nullable=False),
+    Column("role", Text),
+)
+
+supplier = _recorded("supplier", Column("code", Text, nullable=False, unique=True))
+supplier_particulars = _recorded(
+    "supplier_particulars",
+    Column("supplier", Integer, _to("supplier.id"), nullable=False, index=True),
+    Column("name", Text, nullable=False),
+    Column("note", Text),
+)
+
+material = _recorded("material", Column("code", Text, nullable=False, unique=True))
+material_particulars = _recorded(
+    "material_particulars",
+    Column("material", Integer, _to("material.id"), nullable=False, index=True),
+    Column("name", Text, nullable=False),
+    Column("note", Text),
+)
+
+instrument = _recorded("instrument", Column("code", Text, nullable=False, unique=True))
+instrument_particulars = _recorded(
+    "instrument_particulars",
+    Column("instrument", Integer, _to("instrument.id"), nullable=False, index=True),
+    Column("name", Text, nullable=False),
+    Column("note", Text),
+)
+
+batch = _recorded("batch", Column("code", Text, nullable=False, unique=True))
+batch_particulars = _recorded(
+    "batch_particulars",
+    Column("batch", Integer, _to("batch.id"), nullable=False, index=True),
+    Column("material", Integer, _to("material.id"), nullable=False, index=True),
+    Column("supplier", Integer, _to("supplier.id"), nullable=False, index=True),
+    Column("supplier_lot", Text),
+    Column("received", Text),
+    Column("note", Text),
+)
+
+# The unit belongs to the identity: values already recorded are in it.
+characteristic = _recorded(
+    "characteristic", Column("code", Text, nullable=False, unique=True), Column("unit", Text, nullable=False)
+)
+characteristic_particulars = _recorded(
+    "characteristic_particulars",
+    Column("characteristic", Integer, _to("characteristic.id"), nullable=False, index=True),
+    Column("name", Text, nullable=False),
+    Column("method", Text),
+    Column("lower", Float(53)),
+    Column("upper", Float(53)),
+    Column("target", Float(53)),
+    Column("margin", Float(53)),
+    Column("decimals", Integer),
+    Column("safety_critical", Integer, nullable=False),
+    Column("note", Text),
+    CheckConstraint("safety_critical IN (0, 1)", name="truth"),
+    CheckConstraint("lower IS NULL OR upper IS NULL OR lower < upper", name="limits"),
+    CheckConstraint("margin IS NULL OR margin > 0", name="margin"),
+)
+
+# -- what was tested ----------------------------------------------------------------------------------------------
+
+source_file = _recorded(
+    "source_file",
+    Column("name", Text, nullable=False),
+    Column("sha256", Text, nullable=False, index=True),
+    Column("size", Integer, nullable=False),
+)
+
+run = _recorded(
+    "run",
+    Column("batch", Integer, _to("batch.id"), nullable=False),
+    Column("characteristic", Integer, _to("characteristic.id"), nullable=False),
+    Column("tested_at", Text, nullable=False),
+    Column("analyst", Integer, _to("person.id")),
+    Column("instrument", Integer, _to("instrument.id"), index=True),
+    Column("session", Text),
+    Column("note", Text),
+    Column("source_file", Integer, _to("source_file.id"), index=True),
+    Column("source_row", Integer),
+    Index(None, "characteristic", "batch", "tested_at"),
+    Index(None, "batch"),
+)
+
+measurement = _recorded(
+    "measurement",
+    Column("run", Integer, _to("run.id"), nullable=False),
+    Column("replicate", Integer, nullable=False),
+    Column("text", Text, nullable=False),
+    Column("value", Float(53), nullable=False),
+    Column("qualifier", Text),
+    Column("unit", Text),
+    UniqueConstraint("run", "replicate"),
+    CheckConstraint("qualifier IN ('<', '>')", name="qualifier"),
+)
+
+# -- corrections: always with a reason, which stands in the entry -------------------------------------------------
+
+measurement_amendment = _recorded(
+    "measurement_amendment",
+    Column("measurement", Integer, _to("measurement.id"), nullable=False, index=True),
+    Column("text", Text, nullable=False),
+    Column("value", Float(53), nullable=False),
+    Column("qualifier", Text),
+    Column("unit", Text),
+    CheckConstraint("qualifier IN ('<', '>')", name="qualifier"),
+)
+
+run_amendment = _recorded(
+    "run_amendment",
+    Column("run", Integer, _to("run.id"), nullable=False, index=True),
+    Column("batch", Integer, _to("batch.id"), nullable=False, index=True),
+    Column("tested_at", Text, nullable=False),
+    Column("analyst", Integer, _to("person.id")),
+    Column("instrument", Integer, _to("instrument.id")),
+    Column("session", Text),
+    Column("note", Text),
+)
+
+exclusion = _recorded(
+    "exclusion",
+    Column("measurement", Integer, _to("measurement.id"), index=True),
+    Column("run", Integer, _to("run.id"), index=True),
+    Column("batch", Integer, _to("batch.id"), index=True),
+    Column("cause", Text, nullable=False),
+    _one_of("measurement", "run", "batch"),
+)
+
+restoration = _recorded("restoration", Column("exclusion", Integer, _to("exclusion.id"), nullable=False, unique=True))
+
+# -- what is asked ------------------------------------------------------------------------------------------------
+
+comparison = _recorded("comparison", Column("name", Text, nullable=False, unique=True))
+
+comparison_revision = _recorded(
+    "comparison_revision",
+    Column("comparison", Integer, _to("comparison.id"), nullable=False),
+    Column("revision", Integer, nullable=False),
+    Column("characteristic", Integer, _to("characteristic.id"), nullable=False, index=True),
+    Column("grouping", Text, nullable=False),
+    Column("of_material", Integer, _to("material.id")),
+    Column("of_supplier", Integer, _to("supplier.id")),
+    Column("tested_from", Text),
+    Column("model", Text, nullable=False),
+    Column("procedure", Text, nullable=False),
+    Column("unit", Text, nullable=False),
+    Column("alpha", Float(53), nullable=False),
+    Column("alternative", Text, nullable=False),
+    Column("margin", Float(53)),
+    Column("control_batch", Integer, _to("batch.id")),
+    Column("control_material", Integer, _to("material.id")),
+    Column("control_supplier", Integer, _to("supplier.id")),
+    Column("looks", Text, nullable=False),
+    Column("final_units", Integer),
+    Column("spending", Text),
+    UniqueConstraint("comparison", "revision"),
+    CheckConstraint("grouping IN ('batch', 'material', 'supplier')", name="grouping"),
+    CheckConstraint("alpha > 0 AND alpha < 1", name="alpha"),
+)
+
+# The groups of a revision, where they were listed by name; a revision without any takes all that pass its filter.
+comparison_group = _recorded(
+    "comparison_group",
+    Column("revision", Integer, _to("comparison_revision.id"), nullable=False, index=True),
+    Column("place", Integer, nullable=False),
+    Column("batch", Integer, _to("batch.id"), index=True),
+    Column("material", Integer, _to("material.id")),
+    Column("supplier", Integer, _to("supplier.id")),
+    _one_of("batch", "material", "supplier"),
+)
+
+# An act that changed what a comparison rests on: until a conclusion has read that far, the comparison is behind.
+comparison_touch = _recorded(
+    "comparison_touch",
+    Column("comparison", Integer, _to("comparison.id"), nullable=False),
+    Index(None, "comparison", "entry"),
+)
+
+# -- what is answered ---------------------------------------------------------------------------------------------
+
+conclusion = _recorded(
+    "conclusion",
+    Column("comparison", Integer, _to("comparison.id"), nullable=False),
+    Column("version", Integer, nullable=False),
+    Column("revision", Integer, _to("comparison_revision.id"), nullable=False),
+    Column("position", Integer, _to("entry.number"), nullable=False),  # the ledger position that it read
+    Column("look", Integer, nullable=False),
+    Column("inputs", LargeBinary, nullable=False),  # digest of the values it was computed from
+    Column("state", Text, nullable=False),
+    Column("reason", Text),
+    Column("runs", Integer, nullable=False),
+    Column("replicates", Integer, nullable=False),
+    Column("runs_before_statement", Integer, nullable=False),
+    Column("display", Text, nullable=False),
+    Column("test", Text),
+    Column("statistic", Float(53)),
+    Column("df_between", Float(53)),
+    Column("df_within", Float(53)),
+    Column("p_value", Float(53)),
+    Column("critical_value", Float(53)),
+    Column("engine", Text, nullable=False),
+    UniqueConstraint("comparison", "version"),
+    CheckConstraint("state IN ('answered', 'not computed')", name="state"),
+)
+
+conclusion_cause = _recorded(
+    "conclusion_cause",
+    Column("conclusion", Integer, _to("conclusion.id"), nullable=False, index=True),
+    Column("cause", Integer, _to("entry.number"), nullable=False, index=True),
+)
+
+conclusion_group = _recorded(
+    "conclusion_group",
+    Column("conclusion", Integer, _to("conclusion.id"), nullable=False, index=True),
+    Column("place", Integer, nullable=False),
+    Column("batch", Integer, _to("batch.id")),
+    Column("material", Integer, _to("material.id")),
+    Column("supplier", Integer, _to("supplier.id")),
+    Column("units", Integer, nullable=False),
+    Column("runs", Integer, nullable=False),
+    Column("replicates", Integer, nullable=False),
+    Column("mean", Float(53)),
+    Column("sd", Float(53)),
+    Column("lower", Float(53)),
+    Column("upper", Float(53)),
+    Column("letters", Text, nullable=False),  # the lines it stands on, a letter each
+    _one_of("batch", "material", "supplier"),
+)
+
+conclusion_pair = _recorded(
+    "conclusion_pair",
+    Column("conclusion", Integer, _to("conclusion.id"), nullable=False, index=True),
+    Column("a", Integer, _to("conclusion_group.id"), nullable=False),
+    Column("b", Integer, _to("conclusion_group.id"), nullable=False),
+    Column("difference", Float(53)),
+    Column("standard_error", Float(53)),
+    Column("df", Float(53)),
+    Column("statistic", Float(53)),
+    Column("p_value", Float(53)),
+    Column("lower", Float(53)),
+    Column("upper", Float(53)),
+    Column("differs", Integer),
+    Column("verdict", Text, nullable=False),
+    Column("reason", Text),  # why the pair cannot be judged, if it cannot
+    Column("single_look_p", Float(53)),
+    CheckConstraint(
+        "verdict IN ('differs and matters', 'differs', 'equivalent', 'undecided')",
+        name="verdict",
+    ),
+)
+
+conclusion_component = _recorded(
+    "conclusion_component",
+    Column("conclusion", Integer, _to("conclusion.id"), nullable=False, index=True),
+    Column("level", Text, nullable=False),
+    Column("variance", Float(53), nullable=False),
+    Column("lower", Float(53)),
+    Column("upper", Float(53)),
+)
+
+conclusion_caution = _recorded(
+    "conclusion_caution",
+    Column("conclusion", Integer, _to("conclusion.id"), nullable=False, index=True),
+    Column("code", Text, nullable=False),
+    Column("text", Text, nullable=False),
+)
+
+conclusion_turn = _recorded(
+    "conclusion_turn",
+    Column("conclusion", Integer, _to("conclusion.id"), nullable=False, index=True),
+    Column("pair", Integer, _to("conclusion_pair.id"), nullable=False),
+    Column("before", Text),  # the verdict in the version before, none where the pair is new
+    Column("because", Text, nullable=False),
+)
+
+
+def recorded_tables() -> tuple[Table, ...]:
+    """All tables of recorded rows (each with an id, an entry and a digest), in the order in which they depend."""
+    return tuple(table for table in metadata.tables.values() if "digest" in table.columns and table is not entry)
+
+
+def hashed_columns(table: Table) -> tuple[str, ...]:
+    """The columns that a row's digest covers: all but the digest."""
+    return tuple(column.name for column in table.columns if column.name != "digest")
