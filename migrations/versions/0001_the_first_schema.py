@@ -234,6 +234,7 @@ def upgrade() -> None:
         sa.Column("revision", sa.Integer(), nullable=False),
         sa.Column("characteristic", sa.Integer(), nullable=False),
         sa.Column("grouping", sa.Text(), nullable=False),
+        sa.Column("listed", sa.Integer(), nullable=False),
         sa.Column("of_material", sa.Integer(), nullable=True),
         sa.Column("of_supplier", sa.Integer(), nullable=True),
         sa.Column("tested_from", sa.Text(), nullable=True),
@@ -254,6 +255,7 @@ def upgrade() -> None:
             "grouping IN ('batch', 'material', 'supplier')", name=op.f("ck_comparison_revision_grouping")
         ),
         sa.CheckConstraint("alpha > 0 AND alpha < 1", name=op.f("ck_comparison_revision_alpha")),
+        sa.CheckConstraint("listed IN (0, 1)", name=op.f("ck_comparison_revision_truth")),
         sa.ForeignKeyConstraint(
             ["characteristic"], ["characteristic.id"], name=op.f("fk_comparison_revision_characteristic")
         ),

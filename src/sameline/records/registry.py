@@ -142,7 +142,7 @@ def listing(reading: Reading, kind: Kind) -> list[dict[str, Any]]:
 
 
 def codes(connection: Connection, kind: Kind) -> dict[int, str]:
-    """id -> code of all that is registered of a kind."""
+    """The codes, by id, of all that is registered of a kind."""
     return {row.id: row.code for row in connection.execute(select(kind.identity.c.id, kind.identity.c.code))}
 
 

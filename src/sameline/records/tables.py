@@ -244,6 +244,7 @@ comparison_revision = _recorded(
     Column("revision", Integer, nullable=False),
     Column("characteristic", Integer, _to("characteristic.id"), nullable=False, index=True),
     Column("grouping", Text, nullable=False),
+    Column("listed", Integer, nullable=False),  # whether its groups are listed by name (comparison_group)
     Column("of_material", Integer, _to("material.id")),
     Column("of_supplier", Integer, _to("supplier.id")),
     Column("tested_from", Text),
@@ -261,10 +262,11 @@ comparison_revision = _recorded(
     Column("spending", Text),
     UniqueConstraint("comparison", "revision"),
     CheckConstraint("grouping IN ('batch', 'material', 'supplier')", name="grouping"),
+    CheckConstraint("listed IN (0, 1)", name="truth"),
     CheckConstraint("alpha > 0 AND alpha < 1", name="alpha"),
 )
 
-# The groups of a revision, where they were listed by name; a revision without any takes all that pass its filter.
+# The groups of a revision whose groups were listed by name; any other takes all that pass its filter.
 comparison_group = _recorded(
     "comparison_group",
     Column("revision", Integer, _to("comparison_revision.id"), nullable=False, index=True),
