@@ -72,8 +72,10 @@ def log_mixture(tail: KnownScaleTail, q: Array, df: Array) -> tuple[Array, Array
         q: shape (m,), the statistics, not zero.
         df: shape (m,), finite, at least 1.
     """
-    shift = -0.5 * np.log1p(2.0 * tail.rate * q * q / df)
-    edge = np.log(tail.plateau / np.abs(q))
+    # below zero (one-sided statistics only) S rises towards 1, and g alone says where the integrand lives
+    positive = q > 0.0
+    shift = np.where(positive, -0.5 * np.log1p(2.0 * tail.rate * q * q / df), 0.0)
+    edge = np.where(positive, np.log(tail.plateau / np.abs(q)), 0.0)
     left, right = _reach(df)
     low = shift - left
     high = np.minimum(0.0, np.maximum(shift, edge)) + right
