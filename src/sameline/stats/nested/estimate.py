@@ -1,0 +1,114 @@
+"""Components and means from sufficient statistics: the closed form where there is one, else the search."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from sameline.stats.nested.balanced import closed_form, has_closed_form
+from sameline.stats.nested.contrasts import Contrasts, CorrelatedMeans, IndependentMeans
+from sameline.stats.nested.criterion import nested_criterion
+from sameline.stats.nested.kenward_roger import kenward_roger
+from sameline.stats.nested.reml import minimise
+from sameline.stats.nested.satterthwaite import satterthwaite
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from sameline.stats.nested.layout import Layout
+
+DF_METHODS = ("kenward-roger", "satterthwaite")
+WHOLE = 1e-9
+
+
+@dataclass(frozen=True, slots=True)
+class Estimate:
+    """What one fit found, groups in order of first appearance.
+
+    Args:
+        random: names of the components, top down; length t.
+        theta: their variances, shape (t,).
+        criterion: minus twice the REML log likelihood, None where the components were not fitted.
+        means: group means about the origin, shape (k,).
+        spread: variances of means and differences.
+        expected: inverse expected information of all components, shape (t, t).
+        observed: inverse observed information of those above zero, shape (t, t), zero elsewhere.
+        exact_df: degrees of freedom where they are known exactly (one component only).
+    """
+
+    random: tuple[str, ...]
+    theta: NDArray[np.float64]
+    criterion: float | None
+    means: NDArray[np.float64]
+    spread: IndependentMeans | CorrelatedMeans
+    expected: NDArray[np.float64]
+    observed: NDArray[np.float64]
+    exact_df: float | None = None
+
+    def judged(self, contrasts: Contrasts, method: str) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+        """Standard errors and degrees of freedom of m contrasts by one of `DF_METHODS`, shape (m,) each."""
+        if method == "kenward-roger":
+            error, df = kenward_roger(contrasts, self.expected)
+        else:
+            error, df = satterthwaite(contrasts, self.observed)
+        if self.exact_df is not None:
+            df = np.full(df.shape, self.exact_df)
+        whole = np.round(df)
+        return error, np.where(np.abs(df - whole) < WHOLE * df, whole, df)
+
+
+def estimate_nested(layout: Layout, place: NDArray[np.intp]) -> Estimate:
+    """Fits nested data by REML.
+
+    Args:
+        layout: sufficient statistics in canonical order.
+        place: canonical code of each group in the order wanted, shape (k,).
+    """
+    t = len(layout.random)
+    if has_closed_form(layout):
+        theta = closed_form(layout)
+        found = nested_criterion(layout, theta)
+    else:
+        theta, found = minimise(lambda at: nested_criterion(layout, at), starting_points(layout))
+    return Estimate(
+        random=layout.random,
+        theta=theta,
+        criterion=found.value,
+        means=found.means[place],
+        spread=IndependentMeans.of(found.precision.taken(place)),
+        expected=inverse(found.information),
+        observed=inverse_of_free(0.5 * found.hessian, theta > 0.0),
+        exact_df=float(layout.values - layout.k) if t == 1 else None,
+    )
+
+
+def starting_points(layout: Layout) -> list[NDArray[np.float64]]:
+    """Where the search starts: all spread shared evenly, all in the residual, nearly all above it."""
+    t = len(layout.random)
+    per_upper = np.add.reduceat(layout.count * layout.size, layout.cell_starts)
+    starts = layout.upper_starts
+    mean = np.add.reduceat(layout.centre * per_upper, starts) / np.add.reduceat(per_upper, starts)
+    between = layout.centre - np.repeat(mean, np.diff(np.append(starts, layout.centre.size)))
+    total = layout.within_ss + float(np.sum(layout.size * layout.second)) + float(np.sum(per_upper * between**2))
+    scale = total / (layout.values - layout.k)
+    mostly_residual = np.array([1e-3] * (t - 1) + [1.0])
+    within = layout.within_ss / layout.within_df if layout.within_df else scale
+    shares = np.append(np.full(t - 1, scale), max(within, 1e-6 * scale))
+    return [shares, scale * mostly_residual]
+
+
+def inverse(information: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Inverse of a symmetric positive definite matrix, scaled to a unit diagonal first."""
+    scale = 1.0 / np.sqrt(np.diag(information))
+    inner = np.linalg.inv(information * scale[:, None] * scale)
+    return np.asarray(0.5 * (inner + inner.T) * scale[:, None] * scale)
+
+
+def inverse_of_free(information: NDArray[np.float64], free: NDArray[np.bool_]) -> NDArray[np.float64]:
+    """Inverse of the free rows and columns, zero elsewhere."""
+    full = np.zeros_like(information)
+    at = np.ix_(free, free)
+    full[at] = inverse(information[at])
+    return full

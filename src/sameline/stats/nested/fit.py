@@ -1,0 +1,154 @@
+"""The nested model of quality-control data: value ~ group, batch within group, run within batch, replicate error.
+
+Restricted maximum likelihood (REML) gives the components; means and differences of groups come with Kenward and
+Roger's standard errors and degrees of freedom, or Satterthwaite's. On balanced data with one run a replicate it is
+exactly the textbook one-way analysis.
+
+References: Harville (1977), J. Amer. Statist. Assoc. 72:320-338 (REML); Kenward and Roger (1997), Biometrics
+53:983-997; ISO 5725-3 (repeatability and intermediate precision).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from types import MappingProxyType
+from typing import TYPE_CHECKING, Any
+
+from sameline.errors import StatsError
+from sameline.stats.nested import cautioning
+from sameline.stats.nested.estimate import DF_METHODS, Estimate, estimate_nested
+from sameline.stats.nested.known_spread import KnownSpread, estimate_with
+from sameline.stats.nested.layout import layout_of
+from sameline.stats.nested.levels import Chain, Collapsed, chain_of
+from sameline.stats.nested.means import NestedMeans, means_of
+from sameline.stats.nested.pairs import Asked, NestedPairs, pairs_of
+from sameline.stats.nested.rows import read_rows
+from sameline.stats.verdicts import check_alpha, check_margin
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable, Mapping
+
+    from sameline.stats.cautions import Caution
+
+
+@dataclass(frozen=True, slots=True)
+class NestedFit:
+    """A fitted nested model.
+
+    Args:
+        groups: group labels in order of first appearance; ("all",) when none were given.
+        components: variances by level, top down, such as {"batch": 0.4, "run": 0.2, "replicate": 0.1}, in the squared
+            unit of the values. A level that cannot be told apart is not there; see `collapsed`.
+        collapsed: levels without a component of their own, and what that means.
+        at_zero: levels whose component is estimated at exactly zero.
+        df_method: "kenward-roger" or "satterthwaite".
+        reml_criterion: minus twice the restricted log likelihood; None when the run's spread was brought from outside.
+        counts: number of units by level, such as {"group": 3, "batch": 9, "run": 18, "replicate": 54}.
+        cautions: what a reader must know.
+        known: the run-to-run spread brought from outside, if it was used.
+        unseen: why no pair can be judged, or None.
+    """
+
+    groups: tuple[str, ...]
+    components: Mapping[str, float]
+    collapsed: tuple[Collapsed, ...]
+    at_zero: tuple[str, ...]
+    df_method: str
+    reml_criterion: float | None
+    counts: Mapping[str, int]
+    cautions: tuple[Caution, ...]
+    known: KnownSpread | None
+    unseen: str | None
+    _estimate: Estimate
+    _chain: Chain
+
+    def means(self, alpha: float = 0.05) -> NestedMeans:
+        """Group means with 1 - alpha intervals, each for itself.
+
+        Raises:
+            StatsError: alpha is not between 0 and 1.
+        """
+        return means_of(self._estimate, self._chain.rows, self.df_method, alpha, self.unseen)
+
+    def pairs(
+        self,
+        alpha: float = 0.05,
+        adjust: str = "tukey",
+        control: str | None = None,
+        margin: float | None = None,
+        *,
+        alternative: str = "two-sided",
+    ) -> NestedPairs:
+        """Differences between groups with verdicts, mean(b) - mean(a).
+
+        Args:
+            alpha: error rate of all pairs together (of each pair with "none").
+            adjust: "tukey" (all pairs), "dunnett" (with a control), "holm", "bonferroni" or "none".
+            control: label of the control; pairs with it only, it is `a`.
+            margin: smallest difference that matters, in the values' unit.
+            alternative: "two-sided"; with "dunnett" also "greater" or "less" (of b against the control).
+
+        Raises:
+            StatsError: one group only, an unknown control or adjustment, or options that do not go together.
+        """
+        asked = Asked(check_alpha(alpha), adjust, control, check_margin(margin), alternative)
+        return pairs_of(self, self._estimate, asked)
+
+
+def fit_nested(
+    values: Iterable[Any],
+    groups: Iterable[Any] | None,
+    batches: Iterable[Any] | None = None,
+    runs: Iterable[Any] | None = None,
+    *,
+    sessions: Iterable[Any] | None = None,
+    df: str = "kenward-roger",
+    known: KnownSpread | None = None,
+) -> NestedFit:
+    """Fits group means with nested random batches and runs.
+
+    A batch belongs to its group and a run to its batch: the same label in two groups is two batches. Where the groups
+    are batches, give them as `groups`, leave `batches` out and give `runs`: value ~ group + run within group.
+
+    Args:
+        values: measured values, shape (n,).
+        groups: label of each value's group, or None to fit the components of one characteristic.
+        batches: label of its batch within the group, or None.
+        runs: label of its run within the batch, or None; without it each value counts as a unit of its batch.
+        sessions: label of the session (day) shared by the batches tested together, or None.
+        df: "kenward-roger" or "satterthwaite".
+        known: run-to-run spread from outside, used only where every group has one run.
+
+    Raises:
+        StatsError: the input cannot be read, nothing varies, or there is no replication at any level.
+    """
+    if df not in DF_METHODS:
+        raise StatsError(
+            f"degrees of freedom by {df!r} are not known here", where="df", advice=f"one of {', '.join(DF_METHODS)}"
+        )
+    rows = read_rows(values, groups, batches, runs, sessions)
+    chain = chain_of(rows, spread_known=known is not None)
+    hidden = next((gone for gone in chain.collapsed if gone.level == "run" and gone.into == "group"), None)
+    used = known if hidden else None
+    if not chain.random and used is None:
+        raise StatsError(
+            "there is one value a group: no replication at any level to judge a difference by",
+            where="values",
+            advice="test at least one group in a second run, or bring a known run-to-run spread",
+        )
+    estimate = estimate_with(chain, used) if used else estimate_nested(layout_of(chain), rows.place)
+    unseen = None if used or not hidden or len(rows.groups) == 1 else hidden.meaning
+    return NestedFit(
+        groups=rows.groups,
+        components=MappingProxyType(dict(zip(estimate.random, estimate.theta.tolist(), strict=True))),
+        collapsed=chain.collapsed,
+        at_zero=tuple(n for n, v in zip(estimate.random, estimate.theta, strict=True) if v <= 0.0),
+        df_method=df,
+        reml_criterion=estimate.criterion,
+        counts=MappingProxyType({level: rows.count(level) for level in rows.units}),
+        cautions=cautioning.of_fit(chain, estimate, known, used=used is not None),
+        known=used,
+        unseen=unseen,
+        _estimate=estimate,
+        _chain=chain,
+    )
