@@ -29,18 +29,24 @@ def leaf_hash(data: bytes) -> bytes:
     return hashlib.sha256(b"\x00" + data).digest()
 
 
+def leaf_hashes(data: Iterable[bytes]) -> list[bytes]:
+    """`leaf_hash` of each."""
+    sha256 = hashlib.sha256
+    return [sha256(b"\x00" + leaf).digest() for leaf in data]
+
+
 def node_hash(left: bytes, right: bytes) -> bytes:
     """The hash of an inner node: SHA-256 of 0x01 and its two children's hashes."""
     return hashlib.sha256(b"\x01" + left + right).digest()
 
 
-def root(leaf_hashes: Sequence[bytes]) -> bytes:
-    """The Merkle tree hash over leaves already hashed, in their order.
+def root(leaves: Sequence[bytes]) -> bytes:
+    """The Merkle tree hash over leaves given by their hashes, in their order.
 
     Level by level; a last node without a neighbour goes up as it is, which is where the definition's
     unbalanced right subtree puts it.
     """
-    level = list(leaf_hashes)
+    level = list(leaves)
     if not level:
         return EMPTY_ROOT
     sha256 = hashlib.sha256

@@ -16,11 +16,11 @@ NodeReader = Callable[[int, int], bytes]
 """(level, index) -> the hash of that perfect subtree."""
 
 
-def node_reader(leaf_hashes: Sequence[bytes]) -> NodeReader:
-    """Hand over perfect subtrees from their leaf hashes, computing each when it is asked for."""
+def node_reader(leaves: Sequence[bytes]) -> NodeReader:
+    """Hand over perfect subtrees from the hashes of all leaves, computing each when it is asked for."""
 
     def node(level: int, index: int) -> bytes:
-        return root(leaf_hashes[index << level : (index + 1) << level])
+        return root(leaves[index << level : (index + 1) << level])
 
     return node
 
