@@ -42,7 +42,8 @@ def record(
         act: the act.
         revision: the comparison's revision that was answered.
         answer: what was computed.
-        version, look: of the comparison, counted from 1.
+        version: of the comparison's conclusions, counted from 1.
+        look: of the comparison, counted from 1.
         position: the ledger entry up to which the records were read.
         causes: the entries that touched the comparison since the version before.
         turns: the verdicts that changed against it.

@@ -226,13 +226,12 @@ def _cause(m: Measurement, causes: dict[tuple[str, int], str]) -> str | None:
 def read_register(reading: Reading, now: str) -> Register:
     """What is registered, as intake needs it to check a file or a form."""
     connection = reading.connection
-    zone = connection.execute(select(t.laboratory.c.zone).order_by(t.laboratory.c.id.desc()).limit(1)).scalar_one()
     return Register(
         batches={row["code"]: row["material"] for row in listing(reading, KINDS["batch"])},
         characteristics={row["code"]: _facts(connection, row) for row in listing(reading, KINDS["characteristic"])},
         people=frozenset(codes(connection, KINDS["person"]).values()),
         instruments=frozenset(codes(connection, KINDS["instrument"]).values()),
-        zone=zone,
+        zone=laboratory_zone(connection),
         now=now,
     )
 
@@ -274,3 +273,20 @@ def known_source(connection: Connection, sha256: str) -> tuple[int, str] | None:
     file = t.source_file
     found = connection.execute(select(file.c.entry, file.c.name).where(file.c.sha256 == sha256).limit(1)).first()
     return (found.entry, found.name) if found else None
+
+
+def laboratory_zone(connection: Connection) -> str:
+    """The laboratory's time zone (IANA name): moments written without a zone are in it."""
+    return connection.execute(select(t.laboratory.c.zone).order_by(t.laboratory.c.id.desc()).limit(1)).scalar() or "UTC"
+
+
+def run_of(connection: Connection, measurement: int) -> int:
+    """The run of a measurement, both by id.
+
+    Raises:
+        CallError: there is no such measurement.
+    """
+    found = connection.execute(select(t.measurement.c.run).where(t.measurement.c.id == measurement)).scalar()
+    if found is None:
+        raise CallError(f"there is no measurement {measurement}")
+    return int(found)

@@ -37,35 +37,36 @@ def batches_in_scope(reading: Reading, revision: Revision) -> dict[int, int]:
     return {batch: of_group for batch, of_group in found.items() if of_group in revision.groups}
 
 
-def touched_by_runs(act: Act, runs: Iterable[tuple[int, int, str]]) -> set[int]:
+def touched_by_runs(act: Act, runs: Iterable[tuple[int, int, str]], origin: tuple[int, int] | None = None) -> set[int]:
     """The comparisons in whose scope runs fall.
 
     Args:
         act: the act that records or amends them.
         runs: characteristic id, batch id and moment tested of each.
+        origin: ids of material and supplier, where the batches' are not those recorded before the act.
     """
     latest: dict[tuple[int, int], str] = {}
     for characteristic, batch, tested_at in runs:
         key = (characteristic, batch)
         latest[key] = max(tested_at, latest.get(key, ""))
-    origins = _origins(act.connection, {batch for _, batch in latest})
+    origins = _origins(act.connection, {batch for _, batch in latest}) if origin is None else {}
     touched: set[int] = set()
     for (characteristic, batch), tested_at in latest.items():
-        material, supplier = origins[batch]
+        material, supplier = origin or origins[batch]
         query = _stated_for(characteristic, batch, material, supplier, tested_at)
         touched.update(act.connection.execute(query).scalars())
     return touched
 
 
-def touched_by_batch(act: Act, batch: int) -> set[int]:
-    """The comparisons in whose scope any run of a batch falls, by its particulars as they are now."""
+def touched_by_batch(act: Act, batch: int, origin: tuple[int, int] | None = None) -> set[int]:
+    """The comparisons in whose scope any run of a batch falls, by its origin as recorded, or by this one."""
     run = t.run
     tested = act.connection.execute(
         select(run.c.characteristic, func.max(run.c.tested_at))
         .where(run.c.batch == batch)
         .group_by(run.c.characteristic)
     ).all()
-    return touched_by_runs(act, [(characteristic, batch, at) for characteristic, at in tested])
+    return touched_by_runs(act, [(characteristic, batch, at) for characteristic, at in tested], origin)
 
 
 def touched_by_characteristic(act: Act, characteristic: int) -> set[int]:

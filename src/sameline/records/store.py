@@ -70,7 +70,7 @@ class Store:
         with _said_plainly(str(opened)), engines.for_writing(opened._engine) as connection, connection.begin():
             engines.lock_for_writing(connection)
             revision = schema.found_revision(connection)
-            if revision is not None and not upgrade:
+            if revision is not None and not upgrade and _has_entries(connection, revision):
                 schema.check_revision(revision)
                 raise StoreError(
                     "there is a store here already",
@@ -80,7 +80,7 @@ class Store:
             if revision is not None and revision not in schema.REVISIONS:
                 schema.check_revision(revision)
             schema.upgrade(connection)
-        return opened, revision is None
+            return opened, not _has_entries(connection, schema.REVISIONS[-1])
 
     def __str__(self) -> str:
         url = self._engine.url
@@ -133,6 +133,13 @@ class Store:
             act = Act(connection, what, person=1 if first else _person(connection, by), at=at, reason=reason)
             yield act
             act.record()
+
+
+def _has_entries(connection: Connection, revision: str) -> bool:
+    """Whether anything was recorded: making a store may have been cut short before its first entry."""
+    if revision not in schema.REVISIONS:
+        return True
+    return connection.execute(select(entry.c.number).limit(1)).first() is not None
 
 
 def _person(connection: Connection, code: str) -> int:

@@ -51,7 +51,8 @@ def read_trail(
         person: only this person's (by code).
         batch: only those that wrote something about this batch (by code).
         comparison: only those that stated, touched or concluded this comparison (by id).
-        since, until: only those recorded from, and before, these moments (UTC, ISO 8601).
+        since: only those recorded at or after this moment (UTC, ISO 8601).
+        until: only those recorded before this moment.
         last: only so many, the newest.
     """
     entry = t.entry

@@ -1,0 +1,170 @@
+"""The answer to a comparison's revision, from its inputs: computed, or the reason why nothing can be."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+from sameline.errors import StatsError
+from sameline.records.answers import ANSWERED, NOT_COMPUTED, Answer, CautionAnswer, GroupAnswer
+
+if TYPE_CHECKING:
+    from sameline.conclusions.inputs import Inputs, Value
+    from sameline.conclusions.judged import Judged
+    from sameline.records.comparisons import Revision
+
+
+def answer(revision: Revision, inputs: Inputs) -> Answer:
+    """What the revision's procedure says of these inputs.
+
+    Never raises for what the data are: a comparison that cannot be answered is answered so, with the reason.
+    """
+    found = _judge(revision, inputs)
+    cautions = (*_stated_late(inputs, revision), *found.cautions, *_set_aside(revision, inputs, found))
+    return replace(found, cautions=cautions)
+
+
+def _judge(revision: Revision, inputs: Inputs) -> Answer:
+    nothing = _nothing(inputs)
+    reason = _refusal(revision, inputs)
+    if reason is not None:
+        return replace(nothing, reason=reason)
+    from sameline.conclusions.models import judge  # the statistics are loaded only when there is something to compute
+
+    try:
+        judged = judge(revision, inputs)
+    except StatsError as error:
+        return replace(nothing, reason=str(error))
+    return _answered(nothing, judged)
+
+
+def _answered(nothing: Answer, judged: Judged) -> Answer:
+    groups = tuple(_filled(group, judged) for group in nothing.groups)
+    return replace(
+        nothing,
+        state=ANSWERED,
+        reason=None,
+        display=judged.display,
+        groups=groups,
+        pairs=judged.pairs,
+        components=judged.components,
+        cautions=judged.cautions,
+        test=judged.test,
+        critical_value=judged.critical_value,
+        engine=judged.engine,
+    )
+
+
+def _filled(group: GroupAnswer, judged: Judged) -> GroupAnswer:
+    summary = judged.groups.get(group.label)
+    if summary is None:
+        return group
+    return replace(
+        group,
+        units=summary.units,
+        mean=summary.mean,
+        sd=summary.sd,
+        lower=summary.lower,
+        upper=summary.upper,
+        letters=judged.letters.get(group.label, ""),
+    )
+
+
+def _nothing(inputs: Inputs) -> Answer:
+    """The answer before anything is computed: what there is to compute from."""
+    kept = inputs.kept
+    return Answer(
+        inputs=inputs.digest(),
+        state=NOT_COMPUTED,
+        reason=None,
+        runs=len({v.run for v in kept}),
+        replicates=len(kept),
+        runs_before_statement=len({v.run for v in kept if v.before}),
+        display="matrix",
+        groups=tuple(_counted(number, label, kept) for number, label in inputs.groups),
+        pairs=(),
+        components=(),
+        cautions=(),
+        test=None,
+        critical_value=None,
+        engine="",
+    )
+
+
+def _counted(number: int, label: str, kept: tuple[Value, ...]) -> GroupAnswer:
+    own = [v for v in kept if v.group == label]
+    runs = len({v.run for v in own})
+    return GroupAnswer(number, label, 0, runs, len(own), None, None, None, None, "")
+
+
+def _refusal(revision: Revision, inputs: Inputs) -> str | None:
+    """Why nothing can be computed, if that is plain before any statistics."""
+    kept = inputs.kept
+    filled = {v.group for v in kept}
+    if not filled:
+        return "no results have been recorded in its scope so far"
+    if len(filled) == 1:
+        return f"only one group has results so far: {filled.pop()}"
+    if revision.control is not None and inputs.control not in filled:
+        return f"the control {inputs.control or ''} has no results so far"
+    censored = sum(v.censored for v in kept)
+    if censored and not (revision.model == "ranks" and revision.unit == "replicate"):
+        return (
+            f"{censored} of {len(kept)} values are only bounds (such as <0.5), so no mean can be formed; "
+            "restate it with the ranks model on replicates, or set them aside with a cause"
+        )
+    return None
+
+
+@dataclass(frozen=True, slots=True)
+class _Turned:
+    a: str
+    b: str
+    now: str
+    with_them: str
+
+
+def _set_aside(revision: Revision, inputs: Inputs, found: Answer) -> tuple[CautionAnswer, ...]:
+    """What is set aside, and whether any verdict would turn with it put back."""
+    aside = [v for v in inputs.values if v.excluded is not None]
+    if not aside:
+        return ()
+    back = replace(inputs, values=tuple(replace(v, excluded=None) for v in inputs.values))
+    other = _judge(revision, back)
+    then = {(p.a, p.b): p.verdict for p in other.pairs}
+    turned = [
+        _Turned(p.a, p.b, p.verdict, then[p.a, p.b])
+        for p in found.pairs
+        if (p.a, p.b) in then and then[p.a, p.b] != p.verdict
+    ]
+    runs = len({v.run for v in aside})
+    what = f"{len(aside)} {_plural('value', len(aside))} of {runs} {_plural('run', runs)} are set aside"
+    if found.state != ANSWERED or other.state != ANSWERED:
+        effect = (
+            "put back, the comparison could not be computed"
+            if found.state == ANSWERED
+            else "it could not be compared with them"
+        )
+    elif turned:
+        effect = "put back, these verdicts would turn: " + "; ".join(
+            f"{x.a} and {x.b} from {x.now} to {x.with_them}" for x in turned
+        )
+    else:
+        effect = "put back, no verdict would turn"
+    return (CautionAnswer("set aside", f"{what}; {effect}"),)
+
+
+def _stated_late(inputs: Inputs, revision: Revision) -> tuple[CautionAnswer, ...]:
+    early = len({v.run for v in inputs.kept if v.before})
+    if not early:
+        return ()
+    all_runs = len({v.run for v in inputs.kept})
+    text = (
+        f"{early} of its {all_runs} runs had been recorded before this comparison was stated "
+        f"(revision {revision.revision}): a question asked after its answer could be seen"
+    )
+    return (CautionAnswer("stated after data", text),)
+
+
+def _plural(word: str, count: int) -> str:
+    return word if count == 1 else word + "s"

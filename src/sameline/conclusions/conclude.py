@@ -1,0 +1,76 @@
+"""One look: a comparison is answered from the records as they are, and the answer recorded."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from sqlalchemy import select
+
+from sameline.conclusions.answer import answer
+from sameline.conclusions.inputs import gather
+from sameline.conclusions.turns import because, turns
+from sameline.records import concluded
+from sameline.records.acts import Act
+from sameline.records.answers import Answer, Conclusion
+from sameline.records.comparisons import Revision, read_revision
+from sameline.records.scope import touches_since
+from sameline.records.store import Reading, Store
+from sameline.records.tables import entry
+
+ACT = "conclude"
+
+
+def bring_up_to_date(store: Store, comparison: int, *, by: str, at: str) -> Conclusion:
+    """Answer a comparison from the records as they are now, in a transaction of its own.
+
+    Args:
+        store: the store.
+        comparison: the comparison's id.
+        by: code of the person whose act led to it.
+        at: the moment (UTC, ISO 8601).
+
+    Returns:
+        The new conclusion as recorded.
+    """
+    with store.act(ACT, by=by, at=at) as act:
+        version = _conclude(act, comparison)
+    with store.reading() as reading:
+        return concluded.version_of(reading, comparison, version)
+
+
+def answer_as_of(reading: Reading, revision: Revision) -> Answer:
+    """The answer to a revision from the records as they were: what a look then must have found."""
+    return answer(revision, gather(reading, revision))
+
+
+def _conclude(act: Act, comparison: int) -> int:
+    reading = Reading(act.connection, act.number - 1)
+    revision = read_revision(reading, comparison)
+    found = answer_as_of(reading, revision)
+    before = concluded.latest(reading, comparison)
+    causes = touches_since(act.connection, comparison, before.position if before else 0, reading.position)
+    version, look = _numbers(before, found)
+    concluded.record(
+        act,
+        revision,
+        found,
+        version=version,
+        look=look,
+        position=reading.position,
+        causes=causes,
+        turns=turns(before.answer if before else None, found, because(_acts(act, causes))),
+    )
+    return version
+
+
+def _numbers(before: Conclusion | None, found: Answer) -> tuple[int, int]:
+    """Version and look: a look is a version computed on other data than the one before."""
+    if before is None:
+        return 1, 1
+    looked_again = found.inputs != before.answer.inputs
+    return before.version + 1, before.look + looked_again
+
+
+def _acts(act: Act, causes: Sequence[int]) -> list[str]:
+    query = select(entry.c.act).where(entry.c.number.in_(causes)).order_by(entry.c.number)
+    return list(act.connection.execute(query).scalars())

@@ -1,0 +1,145 @@
+"""Checking that goes beyond hashes: every conclusion computed again from the rows as of its look.
+
+The same machine and library versions must give the same answer to the last bit. Other versions may differ by
+`TOLERANCE` relative in a figure, but in no verdict, line, count or word.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass, fields, is_dataclass, replace
+from typing import Any
+
+from sameline.conclusions.conclude import answer_as_of
+from sameline.conclusions.models import engine
+from sameline.records import comparisons, concluded, scope
+from sameline.records.answers import Answer
+from sameline.records.checks import Finding, LedgerReport, check_ledger
+from sameline.records.store import Reading, Store
+
+TOLERANCE = 1e-9
+
+CHECKS = (
+    "the schema and its refusing triggers",
+    "the chain of entries",
+    "the ledger's tree",
+    "the rows that the entries wrote: all there, no other",
+    "each row's own digest",
+    "each entry's Merkle root over its rows",
+    "every reference",
+    "every conclusion, computed again from the rows as of its look",
+    "every comparison: none left behind unseen",
+)
+"""What verification checks, in the order of the findings' numbers (from 1)."""
+
+Progress = Callable[[str, int, int], None]
+
+
+@dataclass(frozen=True, slots=True)
+class Verification:
+    """What verification found.
+
+    Attributes:
+        ledger: the report on entries and rows.
+        conclusions: how many were recomputed.
+        findings: all, in the order of the checks.
+        behind: names of the comparisons that are behind and say so; no finding.
+    """
+
+    ledger: LedgerReport
+    conclusions: int
+    findings: tuple[Finding, ...]
+    behind: tuple[str, ...]
+
+
+def verify(store: Store, progress: Progress | None = None) -> Verification:
+    """Check the ledger against the rows, then recompute every conclusion.
+
+    Args:
+        store: an open store.
+        progress: told now and then what is checked, how far it is, and how far it goes.
+    """
+    tell = progress or (lambda _what, _done, _all: None)
+    with store.engine.connect() as connection, connection.begin():
+        ledger = check_ledger(connection, lambda done, total: tell("rows", done, total))
+    if any(f.check <= 4 and f.table in _NEEDED for f in ledger.findings):
+        note = Finding(8, None, None, None, None, "not recomputed: the records above are damaged where they are read")
+        return Verification(ledger, 0, (*ledger.findings, note), ())
+    with store.reading() as reading:
+        found = list(_conclusions(reading, tell))
+        late = set(scope.behind(reading))
+        names = dict(comparisons.stated_names(reading))
+        found += _left_behind(reading, late)
+        count = len(concluded.all_versions(reading))
+    return Verification(ledger, count, (*ledger.findings, *found), tuple(names[c] for c in sorted(late)))
+
+
+_NEEDED = frozenset({"entry", "comparison", "comparison_revision", "conclusion", "person"})
+
+
+def _conclusions(reading: Reading, tell: Progress) -> Iterator[Finding]:
+    """8. Every conclusion, in the order in which they were recorded."""
+    recorded = concluded.all_versions(reading)
+    for done, (comparison, version) in enumerate(recorded, 1):
+        yield from _conclusion(reading, comparison, version)
+        tell("conclusions", done, len(recorded))
+
+
+def _conclusion(reading: Reading, comparison: int, version: int) -> Iterator[Finding]:
+    conclusion = None
+    try:
+        conclusion = concluded.version_of(reading, comparison, version)
+        then = replace(reading, position=conclusion.position, latest=False)
+        revision = comparisons.read_revision(then, comparison, revision_id=conclusion.revision_id)
+        again = answer_as_of(then, revision)
+    except Exception as error:  # noqa: BLE001 - damaged records can break any step, and that is the finding
+        what = f"{conclusion.name} v{version}" if conclusion else f"comparison {comparison} v{version}"
+        yield Finding(8, "conclusion", None, None, None, f"{what} cannot be computed again: {error}")
+        return
+    tolerance = 0.0 if conclusion.answer.engine in {engine(), ""} else TOLERANCE
+    different = list(differences(conclusion.answer, again, tolerance))
+    if different:
+        where = "; ".join(different[:3]) + (f"; and {len(different) - 3} more" if len(different) > 3 else "")
+        problem = f"{conclusion.name} v{version} comes out otherwise when computed again: {where}"
+        yield Finding(8, "conclusion", conclusion.id, conclusion.entry, conclusion.person, problem)
+
+
+def differences(recorded: Answer, again: Answer, tolerance: float) -> Iterator[str]:
+    """Where two answers differ: "pairs 1 p_value: recorded 0.03, now 0.04"; the engine's versions do not count."""
+    yield from _differences("", replace(recorded, engine=""), replace(again, engine=""), tolerance)
+
+
+def _differences(path: str, old: Any, new: Any, tolerance: float) -> Iterator[str]:  # noqa: ANN401 - any field
+    if is_dataclass(old) and is_dataclass(new):
+        for f in fields(old):
+            yield from _differences(f"{path} {f.name}".strip(), getattr(old, f.name), getattr(new, f.name), tolerance)
+    elif isinstance(old, tuple) and isinstance(new, tuple) and len(old) == len(new):
+        for at, (one, other) in enumerate(zip(old, new, strict=True), 1):
+            yield from _differences(f"{path} {at}", one, other, tolerance)
+    elif not _same(old, new, tolerance):
+        yield f"{path}: recorded {_short(old)}, now {_short(new)}"
+
+
+def _same(old: Any, new: Any, tolerance: float) -> bool:  # noqa: ANN401
+    if isinstance(old, float) and isinstance(new, float):
+        return old == new or math.isclose(old, new, rel_tol=tolerance, abs_tol=tolerance * 1e-3)
+    return bool(old == new)
+
+
+def _short(value: Any) -> str:  # noqa: ANN401
+    text = value.hex() if isinstance(value, bytes) else str(value)
+    return text if len(text) <= 60 else text[:57] + "..."
+
+
+def _left_behind(reading: Reading, late: set[int]) -> Iterator[Finding]:
+    """9. A comparison that does not say it is behind must rest on the values that its last conclusion read."""
+    for comparison, name in comparisons.stated_names(reading):
+        if comparison in late:
+            continue
+        last = concluded.latest(reading, comparison)
+        revision = comparisons.read_revision(reading, comparison)
+        if last is None or last.revision_id != revision.id:
+            yield Finding(9, "comparison", comparison, None, None, f"{name} has no conclusion on its last revision")
+        elif last.answer.inputs != answer_as_of(reading, revision).inputs:
+            yield Finding(9, "comparison", comparison, last.entry, last.person, f"{name} rests on other values by now")

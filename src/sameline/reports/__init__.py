@@ -1,0 +1,1 @@
+"""Results as people and programs read them: terminal text, data frames, JSON."""

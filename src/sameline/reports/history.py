@@ -1,0 +1,65 @@
+"""How a conclusion came about: its versions, the audit trail, and the report of a verification."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from sameline.conclusions.recompute import CHECKS, Verification
+from sameline.records.answers import ANSWERED, Conclusion
+from sameline.records.trail import TrailEntry
+from sameline.reports.changes import tally, turn_words
+from sameline.reports.text import count, listed, moment, table
+
+_TABLE_WORDS = {
+    "measurement": ("value", "values"),
+    "batch": ("batch", "batches"),
+    "comparison_touch": ("comparison touched", "comparisons touched"),
+}
+_SILENT = ("particulars", "conclusion_", "comparison_revision", "comparison_group", "source_file")
+
+
+def history_text(versions: Sequence[Conclusion]) -> list[str]:
+    """The versions of one comparison's conclusion, oldest first, with what turned at each and why."""
+    lines: list[str] = []
+    for c in versions:
+        said = tally(c) if c.answer.state == ANSWERED else f"not computed: {c.answer.reason}"
+        causes = f"after {'entry' if len(c.causes) == 1 else 'entries'} {listed([str(n) for n in c.causes])}"
+        lines.append(f"v{c.version}, look {c.look}: {moment(c.at)}, {c.person}, entry {c.entry} ({causes})")
+        lines.append(f"    {said}")
+        lines += [f"    {turn_words(turn, c.version)}, because of {turn.because}" for turn in c.turns]
+    return lines
+
+
+def trail_text(entries: Sequence[TrailEntry]) -> list[str]:
+    """The audit trail as a table, with the reason of an act below it."""
+    rows = [(str(e.number), moment(e.at), e.person, e.act, _wrote(e) + _why(e)) for e in entries]
+    return table(("entry", "recorded", "person", "act", "what it wrote, and why"), rows, "><<<<", indent="")
+
+
+def _wrote(entry: TrailEntry) -> str:
+    parts = [
+        count(many, *_TABLE_WORDS.get(name, (name.replace("_", " "), None)))
+        for name, many in entry.rows.items()
+        if not any(word in name for word in _SILENT)
+    ]
+    return ", ".join(parts) or "particulars"
+
+
+def _why(entry: TrailEntry) -> str:
+    return f": {entry.reason}" if entry.reason else ""
+
+
+def verification_text(report: Verification) -> list[str]:
+    """What was checked, by number, with every finding under its check."""
+    ledger = report.ledger
+    lines = [
+        f"{count(ledger.entries, 'entry', 'entries')}, {count(ledger.rows, 'row')}, {count(report.conclusions, 'conclusion')}"
+    ]
+    for number, what in enumerate(CHECKS, 1):
+        found = [f for f in report.findings if f.check == number]
+        lines.append(f"{number}. {what}: {'good' if not found else count(len(found), 'finding')}")
+        lines += [f"     {finding}" for finding in found]
+    lines.append(f"root of the ledger: {ledger.root}")
+    if report.behind:
+        lines.append(f"behind, and said so: {listed(list(report.behind))}; the next act brings them up to date")
+    return lines
