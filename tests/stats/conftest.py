@@ -33,9 +33,9 @@ def near() -> Callable[..., None]:
         assert got.shape == want.shape, label
         assert np.array_equal(np.isnan(got), np.isnan(want)), label
         same = (got == want) | np.isnan(want)
-        with np.errstate(invalid="ignore"):
-            off = np.where(same, 0.0, np.abs(got - want))
-        worst = np.where(same, 0.0, off - (atol + rtol * np.abs(want)))
+        got, want = np.where(same, 0.0, got), np.where(same, 0.0, want)
+        off = np.abs(got - want)
+        worst = off - (atol + rtol * np.abs(want))
         assert np.all(worst <= 0), (
             f"{label}: off by {off.max():.3g}, {got[worst.argmax()]!r} for {want[worst.argmax()]!r}"
         )

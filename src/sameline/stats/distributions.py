@@ -34,6 +34,11 @@ def t_isf(tail: ArrayLike, df: ArrayLike) -> Floats:
     return np.asarray(np.where(np.isinf(df), -special.ndtri(tail), -special.stdtrit(finite, tail)), float)
 
 
+def normal_sf(z: ArrayLike) -> Floats:
+    """P(Z > z) for a standard normal Z."""
+    return np.asarray(special.ndtr(-np.asarray(z, float)), float)
+
+
 def normal_two_sided(z: ArrayLike) -> Floats:
     """P(|Z| > |z|) for a standard normal Z."""
     return np.asarray(2.0 * special.ndtr(-np.abs(z)), float)

@@ -8,6 +8,10 @@ from dataclasses import dataclass
 from sameline.errors import StatsError
 from sameline.stats.adjusted import bonferroni, holm, sidak, welch_holm
 from sameline.stats.columns import Columns, Question
+from sameline.stats.dunn import dunn
+from sameline.stats.dunnett import dunnett
+from sameline.stats.games_howell import games_howell
+from sameline.stats.steel_dwass import steel_dwass
 from sameline.stats.tukey_kramer import tukey_kramer
 
 COMMON, UNEQUAL, RANKS = "common variance", "unequal variances", "ranks"
@@ -37,10 +41,14 @@ class Procedure:
 
 PROCEDURES = (
     Procedure("tukey-kramer", tukey_kramer, COMMON, "q", "none", intervals=True),
+    Procedure("games-howell", games_howell, UNEQUAL, "q", "none", intervals=True),
+    Procedure("dunnett", dunnett, COMMON, "t", "needed", intervals=True),
     Procedure("bonferroni", bonferroni, COMMON, "t", "either", intervals=True),
     Procedure("holm", holm, COMMON, "t", "either", intervals=False),
     Procedure("sidak", sidak, COMMON, "t", "either", intervals=True),
     Procedure("welch-holm", welch_holm, UNEQUAL, "t", "either", intervals=False),
+    Procedure("steel-dwass", steel_dwass, RANKS, "q", "none", intervals=False),
+    Procedure("dunn", dunn, RANKS, "z", "either", intervals=False),
 )
 
 
