@@ -2,33 +2,30 @@
 
 Laboratory values are decimals. Reading 8.9 as the double nearest to it loses the recorded value's last digits, and no
 care afterwards brings them back: with an offset of 1e12 double arithmetic cannot pass about 4 digits of an analysis of
-variance (NIST StRD, one-way analysis of variance, sets of higher difficulty). So the values are turned into integers
-times a common unit, the sums of values and of squares are exact integers, and each result is rounded once.
+variance (NIST StRD, analysis of variance, SmLs07 to SmLs09). So the values are turned into integers times a common
+unit (`recorded_integers` says how a float is read), the sums of values and of squares are exact integers, and each
+result is rounded once.
 
-How values are read, one rule for the whole array:
-
-* text and `decimal.Decimal` are the decimals they say;
-* floats whose shortest decimals all have at most 15 significant digits are those decimals: a double carries every
-  decimal of 15 digits faithfully, so such an array is what somebody wrote down;
-* if one float of the array needs more than 15 digits, they are results of a computation: then all are taken as the
-  doubles stored, exactly (integers times a power of two).
-
-The order of the values cannot matter to any bit of the results.
+Speed: integers are cut into limbs of 16 bits whose sums and products a float64 accumulator holds exactly, so numpy
+does the summing; Python's integers only put the limbs together, once a group. Exact sums do not depend on the order
+of their terms: no order of rows can move a bit.
 """
 
 from __future__ import annotations
 
+import math
+from collections import Counter
 from dataclasses import dataclass
-from decimal import Decimal, InvalidOperation
-from fractions import Fraction
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, TypeVar
 
 import numpy as np
 
 from sameline.errors import StatsError
+from sameline.stats.recorded_integers import Integers, as_integers
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Iterator, Sequence
+    from decimal import Decimal
 
     from numpy.typing import NDArray
 
@@ -36,9 +33,10 @@ if TYPE_CHECKING:
     Whole = NDArray[np.int64]
 
 _LIMB_BITS = 16
-# 2^53 / (2^16)^2: more values than this could round a float64 accumulator of limb products.
-_MOST_VALUES = 1 << 21
-_DIGITS_15 = 1e15
+# 2^53 / (2^16)^2: of more values the sum of limb products could leave the exact range of a double.
+_ROWS_AT_ONCE = 1 << 21
+
+_AnyArray = TypeVar("_AnyArray", bound="NDArray[Any]")
 
 
 @dataclass(frozen=True, slots=True)
@@ -53,7 +51,7 @@ class GroupSums:
         ss: shape (k,), sum of squared deviations from the group's own mean.
         grand_mean: the mean of all values.
         ss_between: sum over groups of n (mean - grand mean)^2.
-        ss_within: sum of `ss`.
+        ss_within: sum of `ss` before it was rounded.
     """
 
     n: NDArray[np.int64]
@@ -65,85 +63,126 @@ class GroupSums:
     ss_within: float
 
 
-def group_sums(values: Array | Sequence[str | Decimal], codes: NDArray[np.integer], groups: int) -> GroupSums:
+def group_sums(
+    values: Array | Sequence[str | Decimal],
+    codes: NDArray[np.integer[Any]],
+    groups: int,
+    *,
+    as_stored: bool = False,
+) -> GroupSums:
     """Return counts, means and sums of squares of each group, exact but for one rounding each.
 
     Args:
-        values: shape (n,), floats, or texts or Decimals; read as the module's text says.
+        values: shape (n,), floats, or texts or Decimals; read as `recorded_integers` says.
         codes: shape (n,), each value's group, 0 to groups - 1.
         groups: the number of groups k; each must have a value.
+        as_stored: take every float as the double stored, also where all are short decimals.
 
     Raises:
-        StatsError: a value that is not finite, a text that is no number, an empty group, codes out of range.
+        StatsError: a value that is not finite, a text that is no number, an empty group, codes out of range, or
+            results beyond the range of doubles.
     """
-    group_of = np.asarray(codes, dtype=np.int64)
-    numbers, unit = _as_integers(values)
-    if len(numbers) != len(group_of):
-        raise StatsError(f"{len(numbers)} values but {len(group_of)} group codes", where="groups")
-    if group_of.size and (group_of.min() < 0 or group_of.max() >= groups):
+    integers = as_integers(values, as_stored=as_stored)
+    group_of = np.asarray(codes, dtype=np.intp)
+    if group_of.shape != (len(integers.numbers),):
+        raise StatsError(f"{len(integers.numbers)} values but codes of shape {group_of.shape}", where="groups")
+    if group_of.min() < 0 or group_of.max() >= groups:
         raise StatsError("a group code lies outside the groups", where="groups")
     n = np.bincount(group_of, minlength=groups)
     if not n.all():
         raise StatsError(f"group {int(np.argmin(n))} has no value", where="groups")
-    pivot = min(numbers)
-    sums, squares = _integer_sums([v - pivot for v in numbers], group_of.tolist(), groups)
-    return _results([int(c) for c in n], sums, squares, pivot, unit)
+    try:
+        return _results(n.tolist(), *_sums(integers, group_of, groups), integers)
+    except OverflowError:
+        raise StatsError("the sums leave the range of doubles", where="values", advice="use another unit") from None
 
 
-def _integer_sums(numbers: list[int], codes: list[int], groups: int) -> tuple[list[int], list[int]]:
+def _sums(integers: Integers, group_of: NDArray[np.intp], groups: int) -> tuple[list[int], list[int], int]:
+    """Return each group's exact sum and sum of squares of (number - pivot), and the pivot."""
+    numbers = integers.numbers
+    if isinstance(numbers, list):
+        return *_python_sums(numbers, group_of.tolist(), groups), 0
+    if integers.classes is None:
+        pivot = int(numbers.min())
+        sums, squares = _limb_sums(numbers - pivot, group_of, groups)
+        return sums, squares, pivot
+    return *_class_sums(numbers, integers.classes, integers.factors, group_of, groups), 0
+
+
+def _python_sums(numbers: list[int], codes: list[int], groups: int) -> tuple[list[int], list[int]]:
+    """Sum integers of any size, the slow and literal way."""
     sums, squares = [0] * groups, [0] * groups
-    for value, code in zip(numbers, codes, strict=True):
-        sums[code] += value
-        squares[code] += value * value
+    for number, code in zip(numbers, codes, strict=True):
+        sums[code] += number
+        squares[code] += number * number
     return sums, squares
 
 
-def _results(n: list[int], sums: list[int], squares: list[int], pivot: int, unit: Fraction) -> GroupSums:
-    """Round the exact results, each once."""
+def _class_sums(
+    numbers: Whole, classes: NDArray[np.intp], factors: tuple[int, ...], group_of: NDArray[np.intp], groups: int
+) -> tuple[list[int], list[int]]:
+    """Sum integers that stand for number·factor: by group and class first, then over the classes of a group."""
+    cells, cell_of = np.unique(group_of * len(factors) + classes, return_inverse=True)
+    sums, squares = [0] * groups, [0] * groups
+    for cell, one, square in zip(cells.tolist(), *_limb_sums(numbers, cell_of, cells.size), strict=True):
+        group, kind = divmod(cell, len(factors))
+        sums[group] += one * factors[kind]
+        squares[group] += square * factors[kind] ** 2
+    return sums, squares
+
+
+def _limb_sums(numbers: Whole, cell_of: NDArray[np.intp], cells: int) -> tuple[list[int], list[int]]:
+    """Return each cell's exact sum and sum of squares of int64 numbers, |number| < 2^63."""
+    sums, squares = [0] * cells, [0] * cells
+    for begin in range(0, numbers.size, _ROWS_AT_ONCE):
+        part, where = numbers[begin : begin + _ROWS_AT_ONCE], cell_of[begin : begin + _ROWS_AT_ONCE]
+        limbs = list(_limbs(np.abs(part)))
+        sign = np.sign(part).astype(np.float64)
+        for i, limb in enumerate(limbs):
+            _add(sums, np.bincount(where, limb * sign, minlength=cells), i * _LIMB_BITS)
+            for j, other in enumerate(limbs[: i + 1]):
+                twice = 0 if i == j else 1
+                _add(squares, np.bincount(where, limb * other, minlength=cells), (i + j) * _LIMB_BITS + twice)
+    return sums, squares
+
+
+def _limbs(sizes: Whole) -> Iterator[Array]:
+    """Yield the 16-bit limbs of non-negative numbers, lowest first, as many as the largest needs."""
+    for shift in range(0, max(int(sizes.max()).bit_length(), 1), _LIMB_BITS):
+        yield ((sizes >> shift) & ((1 << _LIMB_BITS) - 1)).astype(np.float64)
+
+
+def _add(totals: list[int], exact: NDArray[Any], shift: int) -> None:
+    """Add whole doubles times 2^shift to the totals."""
+    for cell, number in enumerate(exact.tolist()):
+        totals[cell] += int(number) << shift
+
+
+def _results(n: list[int], sums: list[int], squares: list[int], pivot: int, integers: Integers) -> GroupSums:
+    """Round the exact results, each once: a quotient of Python's integers is correctly rounded."""
+    up, down = integers.unit.as_integer_ratio()
+    up2, down2 = up * up, down * down
     total, total_sum = sum(n), sum(sums)
-    between = sum(Fraction(s * s, c) for s, c in zip(sums, n, strict=True)) - Fraction(total_sum**2, total)
-    ss = [Fraction(c * q - s * s, c) for c, s, q in zip(n, sums, squares, strict=True)]
+    triples = list(zip(n, sums, squares, strict=True))
+    # sum over groups of s²/c and over all of S²/N, on one denominator
+    by_size: Counter[int] = Counter()
+    for c, s, _ in triples:
+        by_size[c] += s * s
+    common = math.lcm(total, *by_size)
+    of_groups = sum(square * (common // c) for c, square in by_size.items())
+    of_all = total_sum * total_sum * (common // total)
     return GroupSums(
         n=_frozen(np.array(n, dtype=np.int64)),
-        mean=_floats([(pivot + Fraction(s, c)) * unit for s, c in zip(sums, n, strict=True)]),
-        deviation=_floats(
-            [Fraction(s * total - total_sum * c, c * total) * unit for s, c in zip(sums, n, strict=True)]
-        ),
-        ss=_floats([one * unit * unit for one in ss]),
-        grand_mean=float((pivot + Fraction(total_sum, total)) * unit),
-        ss_between=float(between * unit * unit),
-        ss_within=float(sum(ss) * unit * unit),
+        mean=_frozen(np.array([(pivot * c + s) * up / (c * down) for c, s, _ in triples])),
+        deviation=_frozen(np.array([(s * total - total_sum * c) * up / (c * total * down) for c, s, _ in triples])),
+        ss=_frozen(np.array([(c * q - s * s) * up2 / (c * down2) for c, s, q in triples])),
+        grand_mean=(pivot * total + total_sum) * up / (total * down),
+        ss_between=(of_groups - of_all) * up2 / (common * down2),
+        ss_within=(common * sum(squares) - of_groups) * up2 / (common * down2),
     )
 
 
-def _floats(exact: list[Fraction]) -> Array:
-    return _frozen(np.array([float(one) for one in exact]))
-
-
-def _frozen(array: NDArray[Any]) -> NDArray[Any]:
+def _frozen(array: _AnyArray) -> _AnyArray:
+    """Return the array made read-only."""
     array.flags.writeable = False
     return array
-
-
-def _as_integers(values: Array | Sequence[str | Decimal]) -> tuple[list[int], Fraction]:
-    if (isinstance(values, np.ndarray) and values.dtype.kind in "fiu") or all(isinstance(v, float) for v in values):
-        floats = np.asarray(values, dtype=np.float64)
-        if not np.isfinite(floats).all():
-            raise StatsError("a value is not finite", where=f"value {int(np.argmin(np.isfinite(floats)))}")
-        texts = [Decimal(repr(v)) for v in floats.tolist()]
-        if any(len(t.normalize().as_tuple().digits) > 15 for t in texts):
-            texts = [Decimal(v) for v in floats.tolist()]
-    else:
-        try:
-            texts = [Decimal(v) for v in values]
-        except InvalidOperation as error:
-            raise StatsError("a value is no number", where="values") from error
-        if not all(t.is_finite() for t in texts):
-            raise StatsError("a value is not finite", where="values")
-    ratios = [t.as_integer_ratio() for t in texts]
-    unit = 1
-    for _, d in ratios:
-        import math
-
-        unit = math.lcm(unit, d)
-    return [a * (unit // d) for a, d in ratios], Fraction(1, unit)

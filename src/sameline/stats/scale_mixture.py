@@ -16,7 +16,7 @@ The number of nodes for a (q, df) pair depends on that pair alone: no value chan
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Protocol
 
 import numpy as np
 from scipy.special import gammaln
@@ -32,16 +32,27 @@ if TYPE_CHECKING:
 _DEPTH = 39.0
 # Gauss: the trapezoid rule's error is exp(-2 (pi sigma/h)^2), 7e-35 at half a standard deviation; the skewness
 # at few degrees of freedom uses up the surplus.
-_STEP_IN_SIGMA = 0.5
+STEP_IN_SIGMA = 0.5
 # Beyond this x - (e^2x - 1)/2 needs its series near zero.
 _MANY_DF = 1000.0
 # Nodes times pairs in one go, so that the working arrays stay in the cache.
 _BLOCK = 65_536
 
 
+class Mixand(Protocol):
+    """What is mixed over the scale: a tail at known scale, and where its integrand lives."""
+
+    @property
+    def log_tail(self) -> Callable[[Array], Array]:
+        """Return the vectorised logarithm of the tail at known scale."""
+
+    def window(self, q: Array, df: Array) -> tuple[Array, Array, Array]:
+        """Return the first node, the last node, and the widest step that does justice to each pair."""
+
+
 @dataclass(frozen=True, slots=True)
 class KnownScaleTail:
-    """The upper tail of a statistic at known scale, as the outer integral needs it.
+    """The upper tail of a largest statistic at known scale.
 
     Attributes:
         log_tail: vectorised log S(w).
@@ -53,33 +64,30 @@ class KnownScaleTail:
     rate: float
     count: float
 
-    @property
-    def plateau(self) -> float:
-        """Where count·exp(-rate·w²) comes down to 1: S is of order 1 before and falls behind."""
-        return float(np.sqrt(np.log(max(self.count, 2.0)) / self.rate))
+    def window(self, q: Array, df: Array) -> tuple[Array, Array, Array]:
+        """Return nodes' ends and step; q is not zero."""
+        log_count = float(np.log(max(self.count, 2.0)))
+        # S is of order 1 up to the plateau's end, where count·exp(-rate·w²) comes down to 1, and falls behind
+        plateau = np.sqrt(log_count / self.rate)
+        # below zero (one-sided statistics only) S rises towards 1, and g alone says where the integrand lives
+        positive = q > 0.0
+        shift = np.where(positive, -0.5 * np.log1p(2.0 * self.rate * q * q / df), 0.0)
+        edge = np.where(positive, np.log(plateau / np.abs(q)), 0.0)
+        left, right = reach(df)
+        # the edge of S in log w is about 1/(2 log count) wide (extreme values)
+        step = np.minimum(min(0.12, 0.6 / log_count), STEP_IN_SIGMA / np.sqrt(2.0 * df))
+        return shift - left, np.minimum(0.0, np.maximum(shift, edge)) + right, step
 
-    @property
-    def step(self) -> float:
-        """The widest admissible step in x; the edge of S in log w is about 1/(2 log count) wide (extreme values)."""
-        return min(0.12, 0.6 / float(np.log(max(self.count, 2.0))))
 
-
-def log_mixture(tail: KnownScaleTail, q: Array, df: Array) -> tuple[Array, Array]:
-    """Return log P(Q > q) and its derivative by log q.
+def log_mixture(tail: Mixand, q: Array, df: Array) -> tuple[Array, Array]:
+    """Return the logarithm of the mixed tail at q, and its derivative by log q.
 
     Args:
         tail: the tail at known scale.
         q: shape (m,), the statistics, not zero.
         df: shape (m,), finite, at least 1.
     """
-    # below zero (one-sided statistics only) S rises towards 1, and g alone says where the integrand lives
-    positive = q > 0.0
-    shift = np.where(positive, -0.5 * np.log1p(2.0 * tail.rate * q * q / df), 0.0)
-    edge = np.where(positive, np.log(tail.plateau / np.abs(q)), 0.0)
-    left, right = _reach(df)
-    low = shift - left
-    high = np.minimum(0.0, np.maximum(shift, edge)) + right
-    step = np.minimum(tail.step, _STEP_IN_SIGMA / np.sqrt(2.0 * df))
+    low, high, step = tail.window(q, df)
     # classes of node counts, so that unlike pairs are not all given the largest
     nodes = (8 * np.ceil(((high - low) / step + 1.0) / 8.0)).astype(np.intp)
     kinds = np.where(df > _MANY_DF, -nodes, nodes)
@@ -97,7 +105,7 @@ def log_mixture(tail: KnownScaleTail, q: Array, df: Array) -> tuple[Array, Array
     return log_sf, slope
 
 
-def _trapezoid(tail: KnownScaleTail, q: Array, df: Array, x: Array, log_g: Array) -> tuple[Array, Array]:
+def _trapezoid(tail: Mixand, q: Array, df: Array, x: Array, log_g: Array) -> tuple[Array, Array]:
     """Return the logarithm of the integrand's sum over the nodes (axis 0), and the sum's slope by log q."""
     exponent = log_g + tail.log_tail(q * np.exp(x))
     top = exponent.max(axis=0)
@@ -134,7 +142,7 @@ def _log_constant(df: Array) -> Array:
     return np.asarray(np.log(2.0) + np.where(a > 20.0, stirling, plain))
 
 
-def _reach(df: Array) -> tuple[Array, Array]:
+def reach(df: Array) -> tuple[Array, Array]:
     """Return how far left and right of its mode g falls to e^-39 of it, by Newton from outside."""
     depth = _DEPTH / df
     left = np.minimum(depth + 0.5, depth + np.sqrt(depth))
