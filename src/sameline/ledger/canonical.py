@@ -58,18 +58,26 @@ def parse_canonical(data: bytes) -> object:
     Raises:
         FormatError: not UTF-8, not JSON, or another spelling of the same JSON.
     """
+    value = read_json(data)
     try:
-        value = json.loads(data.decode(), object_pairs_hook=_members, parse_constant=_no_constant, parse_int=_integer)
         again = canonical(value)
-    except FormatError:
-        raise
-    except (ValueError, RecursionError) as error:
-        raise FormatError(f"not JSON: {error}") from None
     except LedgerError as error:
         raise FormatError(error.message) from None
     if again != data:
         raise FormatError("JSON, but not in canonical form (RFC 8785)")
     return value
+
+
+def read_json(data: bytes) -> object:
+    """Read JSON, in any spelling that says one thing only.
+
+    Raises:
+        FormatError: not UTF-8, not JSON (RFC 8259), NaN or an infinity, or an object with two members of one name.
+    """
+    try:
+        return json.loads(data.decode(), object_pairs_hook=_members, parse_constant=_no_constant, parse_int=_integer)
+    except (ValueError, RecursionError) as error:
+        raise FormatError(f"not JSON: {error}") from None
 
 
 def float_text(x: float) -> str:

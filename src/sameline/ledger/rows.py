@@ -16,10 +16,11 @@ from sameline.ledger.canonical import (
     canonical,
     float_text,
     integer_text,
+    parse_canonical,
     surrogate_refusal,
     utf16_order,
 )
-from sameline.ledger.errors import LedgerError
+from sameline.ledger.errors import FormatError, LedgerError
 
 Field = str | int | float | bool | bytes | None
 """What a column of a record row may hold."""
@@ -43,6 +44,23 @@ def row_bytes(table: str, fields: Mapping[str, Field]) -> bytes:
     """
     kept = {name: _as_json(value) for name, value in fields.items() if value is not None}
     return canonical({"fields": kept, "table": table})
+
+
+def parse_row(data: bytes) -> tuple[str, dict[str, object]]:
+    """Read a row's canonical bytes back.
+
+    Returns:
+        The table's name and the fields. Bytes come back as the hexadecimal text they were written as, and a whole
+        float as an int.
+
+    Raises:
+        FormatError: not the canonical bytes of a row.
+    """
+    match parse_canonical(data):
+        case {"fields": dict(fields), "table": str(table), **rest} if not rest:
+            if not any(value is None or isinstance(value, dict | list) for value in fields.values()):
+                return table, fields
+    raise FormatError("JSON, but not a row: its fields and its table, and nothing else")
 
 
 class RowEncoder:
