@@ -148,7 +148,7 @@ def parse_checkpoint(data: bytes) -> Checkpoint:
         signature=_read(_signature, signature, 8),
     )
     if (checkpoint.root == EMPTY_ROOT) != (size == 0):
-        raise FormatError(f"a ledger of {size} entries cannot have this root")
+        raise FormatError(f"a ledger of {size} entries cannot have this root", where="line 4")
     return checkpoint
 
 
@@ -170,14 +170,14 @@ def verify_checkpoint(checkpoint: Checkpoint, keys: Collection[bytes] | None = N
 
 
 def _values(lines: list[str]) -> list[str]:
-    if len(lines) > len(_NAMES):
-        raise FormatError("nothing stands below a checkpoint's signature", where=f"line {len(_NAMES) + 2}")
     values = []
     for number, name in enumerate(_NAMES, 2):
         line = lines[number - 2] if number - 2 < len(lines) else ""
         if not line.startswith(name + ": "):
             raise FormatError(f"here stands the checkpoint's {name}, as '{name}: ...'", where=f"line {number}")
         values.append(line[len(name) + 2 :])
+    if len(lines) > len(_NAMES):
+        raise FormatError("nothing stands below a checkpoint's signature", where=f"line {len(_NAMES) + 2}")
     return values
 
 

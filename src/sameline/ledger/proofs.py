@@ -105,6 +105,9 @@ def consistency_path(old: int, new: int, node: NodeReader) -> list[bytes]:
 def verify_inclusion(leaf: bytes, index: int, size: int, path: Sequence[bytes], root_hash: bytes) -> None:
     """Check an inclusion proof: RFC 9162 section 2.1.3.2.
 
+    The size is bound by what binds the root (a signed checkpoint): sizes under which the leaf's path has the same
+    shape pass alike.
+
     Args:
         leaf: the leaf's hash.
         index: its place, from 0.
