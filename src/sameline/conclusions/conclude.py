@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 
 from sqlalchemy import select
 
@@ -41,6 +42,13 @@ def bring_up_to_date(store: Store, comparison: int, *, by: str, at: str) -> Conc
 def answer_as_of(reading: Reading, revision: Revision) -> Answer:
     """The answer to a revision from the records as they were: what a look then must have found."""
     return answer(revision, gather(reading, revision))
+
+
+def naive_answer(reading: Reading, conclusion: Conclusion, unit: str) -> Answer:
+    """What one look says of a conclusion's data that takes each `unit` as independent evidence, for contrast."""
+    then = replace(reading, position=conclusion.position, latest=False)
+    revision = read_revision(then, conclusion.comparison, revision_id=conclusion.revision_id)
+    return answer_as_of(then, replace(revision, model="pooled", unit=unit, looks="single"))
 
 
 def _conclude(act: Act, comparison: int) -> int:

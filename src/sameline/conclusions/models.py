@@ -83,7 +83,7 @@ def _unit_values(unit: str, values: list[Value]) -> tuple[list[float], list[str]
     return list(means.values()), [group for group, _ in means]
 
 
-def _pairs(result: PairsResult) -> tuple[PairAnswer, ...]:
+def _pairs(result: PairsResult | NestedPairs) -> tuple[PairAnswer, ...]:
     why = result.not_estimable
     return tuple(
         PairAnswer(
@@ -143,7 +143,7 @@ def _nested(revision: Revision, inputs: Inputs) -> Judged:
         },
         letters=dict(pairs.display.letters),
         display=pairs.display.kind,
-        pairs=_nested_pairs(pairs),
+        pairs=_pairs(pairs),
         engine=engine(),
         components=tuple(ComponentAnswer(level, v, None, None) for level, v in fit.components.items()),
         cautions=tuple(CautionAnswer(c.code, c.text) for c in fit.cautions),
@@ -157,38 +157,3 @@ def _unit_spread(unit: str, values: Iterable[Value]) -> dict[str, tuple[int, flo
     for (group, _), mean in means.items():
         by_group.setdefault(group, []).append(mean)
     return {group: (len(units), sd(units)) for group, units in by_group.items()}
-
-
-def _nested_pairs(pairs: NestedPairs) -> tuple[PairAnswer, ...]:
-    why = pairs.not_estimable
-    columns = zip(
-        pairs.a,
-        pairs.b,
-        pairs.difference,
-        pairs.standard_error,
-        pairs.df,
-        pairs.statistic,
-        pairs.p_value,
-        pairs.lower,
-        pairs.upper,
-        pairs.verdict,
-        pairs.differs,
-        strict=True,
-    )
-    return tuple(
-        PairAnswer(
-            a=a,
-            b=b,
-            difference=finite(difference),
-            standard_error=finite(error),
-            df=finite(df),
-            statistic=finite(statistic),
-            p_value=finite(p),
-            lower=finite(lower),
-            upper=finite(upper),
-            differs=None if (a, b) in why else differs,
-            verdict=verdict,
-            reason=why.get((a, b)),
-        )
-        for a, b, difference, error, df, statistic, p, lower, upper, verdict, differs in columns
-    )

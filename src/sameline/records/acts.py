@@ -14,6 +14,7 @@ from typing import Any
 from sqlalchemy import Connection, Table, func, insert, select
 
 from sameline import __version__
+from sameline.errors import CallError, StoreError
 from sameline.ledger.canonical import canonical
 from sameline.ledger.merkle import Frontier, leaf_hash, root
 from sameline.ledger.rows import RowEncoder, row_bytes
@@ -60,6 +61,7 @@ class Act:
         number = pending.first + len(pending.rows)
         given = {"id": number, "entry": self.number, **fields}
         unknown = given.keys() - set(pending.columns)
+        _refuse_nul(given.values())
         if unknown:
             raise KeyError(f"{table.name} has no column {', '.join(sorted(unknown))}")
         pending.rows.append(tuple(given.get(column) for column in pending.columns))
@@ -77,6 +79,8 @@ class Act:
         first = pending.first + len(pending.rows)
         number = self.number
         pending.rows.extend((row_id, number, *row) for row_id, row in enumerate(rows, first))
+        for row in pending.rows[first - pending.first :]:
+            _refuse_nul(row)
         return range(first, pending.first + len(pending.rows))
 
     def pending(self, table: Table) -> list[dict[str, Any]]:
@@ -139,7 +143,10 @@ def read_node(connection: Connection, level: int, position: int) -> bytes:
             select(tree_node.c.hash).where(tree_node.c.level == level, tree_node.c.position == position)
         ).scalar()
     if found is None:
-        raise LookupError(f"the ledger's tree lacks its node at level {level}, position {position}")
+        raise StoreError(
+            f"the ledger is damaged: its tree lacks the node at level {level}, position {position}",
+            advice="`sameline verify` tells what else is; restore it from a backup",
+        )
     return found
 
 
@@ -165,6 +172,13 @@ def insert_rows(
         connection.exec_driver_sql(f'INSERT INTO "{table.name}" ({names}) VALUES ({marks})', complete)  # noqa: S608
         return
     connection.execute(insert(table), [dict(zip(columns, row, strict=True)) for row in complete])
+
+
+def _refuse_nul(values: Iterable[object]) -> None:
+    """PostgreSQL keeps no text with a NUL in it; SQLite would, and the two must hold the same."""
+    for value in values:
+        if isinstance(value, str) and "\0" in value:
+            raise CallError(f"{value!r} holds a NUL character", advice="leave it out; it stands for nothing in text")
 
 
 def _digests(name: str, pending: _Pending) -> list[bytes]:

@@ -6,20 +6,24 @@ are still there. The names and texts are part of every store ever made: change t
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 _SQLITE = {
     "no_update": "CREATE TRIGGER {table}_no_update BEFORE UPDATE ON {table} "
     "BEGIN SELECT RAISE(ABORT, 'records are never changed: {table}'); END",
     "no_delete": "CREATE TRIGGER {table}_no_delete BEFORE DELETE ON {table} "
     "BEGIN SELECT RAISE(ABORT, 'records are never deleted: {table}'); END",
-    # INSERT OR REPLACE deletes without asking the trigger above
+    # INSERT OR REPLACE deletes whatever row has one of the new one's unique keys, without asking the trigger above
     "no_replace": "CREATE TRIGGER {table}_no_replace BEFORE INSERT ON {table} "
     "WHEN EXISTS (SELECT 1 FROM {table} WHERE {key}) "
     "BEGIN SELECT RAISE(ABORT, 'records are never replaced: {table}'); END",
 }
 
+FUNCTION_BODY = " BEGIN RAISE EXCEPTION 'records are never changed or deleted: %', TG_TABLE_NAME; END "
+"""What PostgreSQL's triggers run, word for word."""
+
 _POSTGRESQL_FUNCTION = (
-    "CREATE OR REPLACE FUNCTION sameline_refuse() RETURNS trigger LANGUAGE plpgsql AS $$ "
-    "BEGIN RAISE EXCEPTION 'records are never changed or deleted: %', TG_TABLE_NAME; END $$"
+    f"CREATE OR REPLACE FUNCTION sameline_refuse() RETURNS trigger LANGUAGE plpgsql AS $${FUNCTION_BODY}$$"
 )
 _POSTGRESQL = {
     "no_update": "CREATE TRIGGER {table}_no_update BEFORE UPDATE ON {table} "
@@ -36,15 +40,15 @@ def trigger_names(dialect: str, table: str) -> tuple[str, ...]:
     return tuple(f"{table}_{kind}" for kind in (_SQLITE if dialect == "sqlite" else _POSTGRESQL))
 
 
-def guard(dialect: str, table: str, key: tuple[str, ...]) -> list[str]:
+def guard(dialect: str, table: str, keys: Sequence[Sequence[str]]) -> list[str]:
     """The statements that make a table insert only.
 
     Args:
         dialect: "sqlite" or "postgresql".
         table: the table's name.
-        key: its primary key columns.
+        keys: the columns of its primary key and of each other unique key, in a fixed order.
     """
     if dialect == "sqlite":
-        same = " AND ".join(f"{column} = NEW.{column}" for column in key)
+        same = " OR ".join(" AND ".join(f"{column} = NEW.{column}" for column in key) for key in keys)
         return [text.format(table=table, key=same) for text in _SQLITE.values()]
     return [_POSTGRESQL_FUNCTION, *(text.format(table=table) for text in _POSTGRESQL.values())]

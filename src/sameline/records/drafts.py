@@ -6,7 +6,7 @@ an immutable value: no database, no files.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Collection, Container, Mapping
 from dataclasses import dataclass, field
 
 
@@ -100,9 +100,9 @@ class Register:
 
     batches: Mapping[str, str]
     characteristics: Mapping[str, CharacteristicFacts]
-    people: frozenset[str]
-    instruments: frozenset[str]
+    people: Collection[str]
+    instruments: Collection[str]
     zone: str
     now: str
-    runs: frozenset[tuple[str, str, str]] = field(default_factory=frozenset)
-    """(batch, characteristic, tested_at) of runs already recorded among those the file may name."""
+    runs: Container[tuple[str, str, str]] = field(default_factory=frozenset)
+    """(batch, characteristic, tested_at) of the runs already recorded."""

@@ -2,7 +2,8 @@
 
 SQLite runs with write-ahead logging, foreign keys on and full synchronisation; Sameline begins its transactions
 itself, so that a writer takes the write lock at once (BEGIN IMMEDIATE) and waits for it instead of failing later.
-On PostgreSQL writers are serialised by one advisory lock, held until their transaction ends.
+On PostgreSQL writers are serialised by one advisory lock, held until their transaction ends; they read what was
+committed before they got it, while a reader sees one state of the records throughout (REPEATABLE READ).
 """
 
 from __future__ import annotations
@@ -12,6 +13,7 @@ from typing import Any
 
 from sqlalchemy import Connection, Engine, create_engine, event, make_url, text
 from sqlalchemy.engine import URL
+from sqlalchemy.engine.interfaces import IsolationLevel
 from sqlalchemy.exc import ArgumentError, NoSuchModuleError
 
 from sameline.errors import StoreError
@@ -33,6 +35,8 @@ def store_url(store: str | Path) -> URL:
         return URL.create("sqlite", database=named)
     try:
         url = make_url(named)
+        if url.drivername in {"postgresql", "postgres"}:
+            url = url.set(drivername="postgresql+psycopg")
     except ArgumentError as error:
         raise StoreError(
             "the store's URL cannot be read", advice="for example postgresql+psycopg://host/lab"
@@ -72,12 +76,34 @@ def make_engine(url: URL, *, must_exist: bool) -> Engine:
 def lock_for_writing(connection: Connection) -> None:
     """Wait until no other writer is at work; the lock ends with the transaction."""
     if connection.dialect.name == "postgresql":
+        connection.execute(text(f"SET LOCAL lock_timeout = '{BUSY_SECONDS}s'"))
         connection.execute(text("SELECT pg_advisory_xact_lock(:key)"), {"key": _ADVISORY_LOCK})
 
 
 def for_writing(engine: Engine) -> Connection:
     """A connection whose transaction is a writer's from its first statement."""
-    return engine.connect().execution_options(sameline_writes=True)
+    return _isolated(engine.connect(), "READ COMMITTED").execution_options(sameline_writes=True)
+
+
+def for_reading(engine: Engine) -> Connection:
+    """A connection whose transaction sees one state of the records, whatever others record meanwhile."""
+    return _isolated(engine.connect(), "REPEATABLE READ")
+
+
+def keep_log_ahead(engine: Engine) -> None:
+    """Set a SQLite store to write-ahead logging, which it then keeps; only ever done to what is known to be a store."""
+    if engine.dialect.name != "sqlite":
+        return
+    with engine.connect() as connection:
+        raw = connection.connection.dbapi_connection
+        mode = raw.execute("PRAGMA journal_mode").fetchone()[0]  # type: ignore[union-attr]
+        if mode != "wal":
+            raw.execute("PRAGMA journal_mode = WAL")  # type: ignore[union-attr]
+
+
+def _isolated(connection: Connection, level: IsolationLevel) -> Connection:
+    """SQLite needs no word for it: its one writer excludes others, and its readers see the state they began with."""
+    return connection if connection.dialect.name == "sqlite" else connection.execution_options(isolation_level=level)
 
 
 def _check_file(path: Path, *, must_exist: bool) -> None:
@@ -94,7 +120,7 @@ def _check_file(path: Path, *, must_exist: bool) -> None:
 def _set_up_sqlite(connection: Any, _record: object) -> None:  # noqa: ANN401 - the driver's own connection
     connection.isolation_level = None
     cursor = connection.cursor()
-    for pragma in ("journal_mode = WAL", "foreign_keys = ON", "synchronous = FULL", "recursive_triggers = ON"):
+    for pragma in ("foreign_keys = ON", "synchronous = FULL", "recursive_triggers = ON"):
         cursor.execute(f"PRAGMA {pragma}")
     cursor.close()
 

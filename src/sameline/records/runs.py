@@ -6,7 +6,6 @@ replicate is excluded while an exclusion of itself, of its run or of its batch h
 
 from __future__ import annotations
 
-import math
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
@@ -16,14 +15,12 @@ from sqlalchemy import Connection, Select, or_, select
 from sameline.errors import CallError
 from sameline.records import tables as t
 from sameline.records.acts import Act
-from sameline.records.drafts import CharacteristicFacts, DraftRun, Register, SourceFile
-from sameline.records.registry import KINDS, codes, listing
+from sameline.records.drafts import DraftRun, SourceFile
+from sameline.records.registry import KINDS, codes, find
 from sameline.records.store import Reading
 
 _RUN_COLUMNS = ("batch", "characteristic", "tested_at", "analyst", "instrument", "session", "note", "source_file")
 _MEASUREMENT_COLUMNS = ("run", "replicate", "text", "value", "qualifier", "unit")
-_FEW_VALUES = 8  # below this, a characteristic's spread says too little to question a value
-_RECENT_RUNS = 200  # the spread is that of the last runs, so that it costs the same in a store of any age
 
 
 @dataclass(frozen=True, slots=True)
@@ -223,51 +220,6 @@ def _cause(m: Measurement, causes: dict[tuple[str, int], str]) -> str | None:
     return None
 
 
-def read_register(reading: Reading, now: str) -> Register:
-    """What is registered, as intake needs it to check a file or a form."""
-    connection = reading.connection
-    return Register(
-        batches={row["code"]: row["material"] for row in listing(reading, KINDS["batch"])},
-        characteristics={row["code"]: _facts(connection, row) for row in listing(reading, KINDS["characteristic"])},
-        people=frozenset(codes(connection, KINDS["person"]).values()),
-        instruments=frozenset(codes(connection, KINDS["instrument"]).values()),
-        zone=laboratory_zone(connection),
-        now=now,
-    )
-
-
-def _facts(connection: Connection, row: dict[str, Any]) -> CharacteristicFacts:
-    mean, spread = _recent_spread(connection, row["code"])
-    return CharacteristicFacts(
-        code=row["code"],
-        unit=row["unit"],
-        lower=row["lower"],
-        upper=row["upper"],
-        decimals=row["decimals"],
-        safety_critical=bool(row["safety_critical"]),
-        mean=mean,
-        spread=spread,
-    )
-
-
-def _recent_spread(connection: Connection, code: str) -> tuple[float | None, float | None]:
-    """Mean and standard deviation of the uncensored values of the last runs of a characteristic."""
-    run, value = t.run, t.measurement
-    recent = (
-        select(run.c.id)
-        .join_from(run, t.characteristic, run.c.characteristic == t.characteristic.c.id)
-        .where(t.characteristic.c.code == code)
-        .order_by(run.c.id.desc())
-        .limit(_RECENT_RUNS)
-    )
-    query = select(value.c.value).where(value.c.run.in_(recent), value.c.qualifier.is_(None))
-    values = connection.execute(query).scalars().all()
-    if len(values) < _FEW_VALUES:
-        return None, None
-    mean = math.fsum(values) / len(values)
-    return mean, math.sqrt(math.fsum((x - mean) ** 2 for x in values) / (len(values) - 1))
-
-
 def known_source(connection: Connection, sha256: str) -> tuple[int, str] | None:
     """The entry and name under which a file of this content was taken in, if it was."""
     file = t.source_file
@@ -289,4 +241,23 @@ def run_of(connection: Connection, measurement: int) -> int:
     found = connection.execute(select(t.measurement.c.run).where(t.measurement.c.id == measurement)).scalar()
     if found is None:
         raise CallError(f"there is no measurement {measurement}")
+    return int(found)
+
+
+def find_run(reading: Reading, batch: str, characteristic: str, tested_at: str) -> int:
+    """The id of the run of a batch and characteristic (by code) tested at a moment (UTC, ISO 8601).
+
+    Raises:
+        CallError: there is none, or a code is not registered.
+    """
+    connection, run = reading.connection, t.run
+    query = select(run.c.id).where(
+        run.c.characteristic == find(connection, KINDS["characteristic"], characteristic),
+        run.c.batch == find(connection, KINDS["batch"], batch),
+        run.c.tested_at == tested_at,
+        run.c.entry <= reading.position,
+    )
+    found = connection.execute(query.order_by(run.c.id)).scalar()
+    if found is None:
+        raise CallError(f"no run of {characteristic} on {batch} was tested at {tested_at}")
     return int(found)

@@ -30,7 +30,10 @@ def found_revision(connection: Connection) -> str | None:
             "this database is not a Sameline store",
             advice="name another file with --store, or make a new one with `sameline init`",
         )
-    return str(connection.execute(text("SELECT version_num FROM alembic_version")).scalar_one())
+    revisions = connection.execute(text("SELECT version_num FROM alembic_version")).scalars().all()
+    if len(revisions) != 1:
+        raise StoreError("the store does not say which revision its schema has", advice="restore it from a backup")
+    return str(revisions[0])
 
 
 def check_revision(revision: str | None) -> None:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import sqlite3
 from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
@@ -10,13 +9,13 @@ from pathlib import Path
 from typing import Self
 
 from sqlalchemy import Connection, Engine, func, select
-from sqlalchemy.exc import DBAPIError, OperationalError
+from sqlalchemy.exc import DBAPIError
 
 from sameline.errors import CallError, StoreError
 from sameline.records import engine as engines
 from sameline.records import schema
 from sameline.records.acts import Act
-from sameline.records.moments import read_moment
+from sameline.records.moments import is_date, read_moment
 from sameline.records.tables import entry, laboratory, person
 
 
@@ -52,8 +51,15 @@ class Store:
             StoreError: it is missing, is something else, or belongs to an older or newer Sameline.
         """
         opened = cls(engines.make_engine(engines.store_url(store), must_exist=True))
-        with _said_plainly(str(opened)), opened._engine.connect() as connection:
-            schema.check_revision(schema.found_revision(connection))
+        with opened._or_closed(), said_plainly(str(opened)):
+            with opened._engine.connect() as connection:
+                revision = schema.found_revision(connection)
+                schema.check_revision(revision)
+                if not _has_entries(connection):
+                    raise StoreError(
+                        "the making of this store was cut short", advice="run `sameline init` again; it goes on"
+                    )
+            engines.keep_log_ahead(opened._engine)
         return opened
 
     @classmethod
@@ -61,26 +67,38 @@ class Store:
         """Make a store, or with `upgrade` bring an older one to this Sameline's schema.
 
         Returns:
-            The store, and whether it is new.
+            The store, and whether it is new: whether its first entry is still to be recorded.
 
         Raises:
             StoreError: there is a store already (and `upgrade` was not asked), or the place cannot be written.
         """
         opened = cls(engines.make_engine(engines.store_url(store), must_exist=upgrade))
-        with _said_plainly(str(opened)), engines.for_writing(opened._engine) as connection, connection.begin():
-            engines.lock_for_writing(connection)
-            revision = schema.found_revision(connection)
-            if revision is not None and not upgrade and _has_entries(connection, revision):
-                schema.check_revision(revision)
-                raise StoreError(
-                    "there is a store here already",
-                    where=str(opened),
-                    advice="use it as it is, or name another file with --store",
-                )
-            if revision is not None and revision not in schema.REVISIONS:
-                schema.check_revision(revision)
-            schema.upgrade(connection)
-            return opened, not _has_entries(connection, schema.REVISIONS[-1])
+        with opened._or_closed(), said_plainly(str(opened)):
+            with engines.for_writing(opened._engine) as connection, connection.begin():
+                engines.lock_for_writing(connection)
+                new = opened._make(connection, upgrade=upgrade)
+            engines.keep_log_ahead(opened._engine)
+        return opened, new
+
+    def _make(self, connection: Connection, *, upgrade: bool) -> bool:
+        revision = schema.found_revision(connection)
+        if revision is not None and (revision not in schema.REVISIONS or (_has_entries(connection) and not upgrade)):
+            schema.check_revision(revision)
+            raise StoreError(
+                "there is a store here already",
+                where=str(self),
+                advice="use it as it is, or name another file with --store",
+            )
+        schema.upgrade(connection)
+        return not _has_entries(connection)
+
+    @contextmanager
+    def _or_closed(self) -> Iterator[None]:
+        try:
+            yield
+        except BaseException:
+            self.close()
+            raise
 
     def __str__(self) -> str:
         url = self._engine.url
@@ -108,7 +126,7 @@ class Store:
         Args:
             as_of: an entry's number, or a date or time (ISO 8601; without a zone, the laboratory's).
         """
-        with _said_plainly(str(self)), self._engine.connect() as connection, connection.begin():
+        with said_plainly(str(self)), engines.for_reading(self._engine) as connection, connection.begin():
             head = connection.execute(select(func.coalesce(func.max(entry.c.number), 0))).scalar_one()
             position = head if as_of is None else _position(connection, as_of, head)
             yield Reading(connection, position, latest=position == head)
@@ -125,20 +143,20 @@ class Store:
             first: the store's first act, whose person is registered within it.
         """
         with (
-            _said_plainly(str(self)),
+            said_plainly(str(self)),
             engines.for_writing(self._engine) as connection,
             connection.begin(),
         ):
             engines.lock_for_writing(connection)
             act = Act(connection, what, person=1 if first else _person(connection, by), at=at, reason=reason)
+            if first and act.number != 1:
+                raise StoreError("somebody else made this store just now", advice="use it as it is")
             yield act
             act.record()
 
 
-def _has_entries(connection: Connection, revision: str) -> bool:
+def _has_entries(connection: Connection) -> bool:
     """Whether anything was recorded: making a store may have been cut short before its first entry."""
-    if revision not in schema.REVISIONS:
-        return True
     return connection.execute(select(entry.c.number).limit(1)).first() is not None
 
 
@@ -161,56 +179,46 @@ def _position(connection: Connection, as_of: int | str, head: int) -> int:
             raise CallError(f"the ledger has no entry {number}", advice=f"entries run from 1 to {head}")
         return number
     zone = connection.execute(select(laboratory.c.zone).order_by(laboratory.c.id.desc()).limit(1)).scalar() or "UTC"
-    moment = read_moment(as_of, zone)
-    if len(as_of.strip()) == len("2026-03-04"):
-        moment = moment_after_day(moment)
-    found = connection.execute(select(func.max(entry.c.number)).where(entry.c.at < moment)).scalar()
+    moment = read_moment(as_of, zone, whole_day=True)
+    seen = entry.c.at < moment if is_date(as_of) else entry.c.at <= moment
+    found = connection.execute(select(func.max(entry.c.number)).where(seen)).scalar()
     if found is None:
         raise CallError(f"nothing had been recorded by {as_of}", advice="`sameline trail` shows the first entry")
     return int(found)
 
 
-def moment_after_day(moment: str) -> str:
-    """The moment one day later: a date given alone means its whole day."""
-    import datetime as dt
-
-    from sameline.records.moments import utc_text
-
-    return utc_text(dt.datetime.fromisoformat(moment) + dt.timedelta(days=1))
-
-
 @contextmanager
-def _said_plainly(where: str) -> Iterator[None]:
+def said_plainly(where: str) -> Iterator[None]:
     """Turn what a database driver raises into what a person can act on."""
     try:
         yield
-    except OperationalError as error:
-        raise StoreError(*_operational(error), where=where, advice=_advice(error)) from error
     except DBAPIError as error:
-        if isinstance(error.orig, sqlite3.DatabaseError) and "not a database" in str(error.orig):
-            raise StoreError(
-                "this file is not a store", where=where, advice="name another file with --store"
-            ) from error
-        raise StoreError(f"the database refused: {error.orig}", where=where) from error
+        problem, advice = _in_plain_words(str(error.orig).strip() or type(error.orig).__name__)
+        raise StoreError(problem, where=where, advice=advice) from error
 
 
-def _operational(error: OperationalError) -> tuple[str]:
-    text = str(error.orig)
-    if "locked" in text:
-        return (f"another writer held the store for more than {engines.BUSY_SECONDS} s",)
-    if "readonly" in text:
-        return ("the store can be read but not written",)
-    if "unable to open" in text:
-        return ("the store cannot be opened",)
-    if "full" in text:
-        return ("the disk is full; nothing was recorded",)
-    return (f"the database cannot be used: {text.splitlines()[0]}",)
+def _in_plain_words(text: str) -> tuple[str, str | None]:
+    for sign, problem, advice in _SIGNS:
+        if sign in text.lower():
+            return problem, advice
+    return f"the database refused: {text.splitlines()[0]}", None
 
 
-def _advice(error: OperationalError) -> str | None:
-    text = str(error.orig)
-    if "readonly" in text or "unable to open" in text:
-        return "check the permissions of the file and of its folder, which must be writable too"
-    if "locked" in text:
-        return "try again; if no other Sameline runs, look for a backup or sync program that holds the file"
-    return None
+_PERMISSIONS = "check the permissions of the file and of its folder, which must be writable too"
+_HELD = f"another writer held the store for more than {engines.BUSY_SECONDS} s"
+_TRY_AGAIN = "try again; if no other Sameline runs, look for a backup or sync program that holds the file"
+
+_SIGNS = (
+    ("not a database", "this file is not a store", "name another file with --store"),
+    ("malformed", "the store is damaged", "restore it from a backup; `sameline verify` tells what can still be read"),
+    ("locked", _HELD, _TRY_AGAIN),
+    ("lock timeout", _HELD, "try again; look for a writer that hangs, in the server's list of sessions"),
+    ("readonly", "the store can be read but not written", _PERMISSIONS),
+    ("unable to open", "the store cannot be opened", _PERMISSIONS),
+    ("is full", "the disk is full; nothing was recorded", "make room, then do it again"),
+    ("no space left", "the disk is full; nothing was recorded", "make room, then do it again"),
+    ("disk i/o error", "the disk cannot be read or written", "nothing was recorded; check the disk"),
+    ("permission denied", "the database does not allow this", "ask whoever runs the server for the rights to it"),
+    ("records are never", "records are never changed or deleted", "amend instead"),
+)
+"""What a driver's message contains, what that means, and what to do."""

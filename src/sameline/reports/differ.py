@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 
-from sameline.records.answers import ANSWERED, Conclusion, GroupAnswer, PairAnswer
+from sameline.records.answers import ANSWERED, Answer, Conclusion, GroupAnswer, PairAnswer
 from sameline.reports.changes import tally
 from sameline.reports.subject import Subject
 from sameline.reports.text import count, interval, moment, number, p_value, percent, plain, table
@@ -62,6 +62,25 @@ def differ_text(conclusion: Conclusion, subject: Subject, *, behind: bool, all_p
     while lines and not lines[-1]:
         lines.pop()
     return lines
+
+
+def contrast_text(conclusion: Conclusion, naive: Answer, subject: Subject, unit: str) -> list[str]:
+    """What a single look would have said that takes each unit as independent evidence, beside what was concluded."""
+    words = f"For contrast, a single look at {percent(subject.revision.alpha)} that takes {_UNITS[unit]} as independent"
+    if naive.state != ANSWERED:
+        return ["", f"  {words} could not be computed: {naive.reason}."]
+    concluded = {(p.a, p.b): p.verdict for p in conclusion.answer.pairs}
+    decimals = subject.decimals + 1
+    rows = [
+        (*_pair_row(p, decimals), concluded.get((p.a, p.b), "–"))
+        for p in naive.pairs
+        if p.differs or p.verdict != concluded.get((p.a, p.b))
+    ]
+    if not rows:
+        return ["", f"  {words} would say the same of every pair."]
+    confidence = percent(1 - subject.revision.alpha)
+    headings = ("pair", "difference", f"{confidence} interval", "p-value", "it would say", "concluded")
+    return ["", f"  {words} would say:", *table(headings, rows, "<><><<")]
 
 
 def overview_text(rows: Sequence[tuple[str, Conclusion | None, bool]]) -> list[str]:
@@ -181,16 +200,22 @@ def _pairs(conclusion: Conclusion, subject: Subject, *, all_pairs: bool) -> list
 
 
 def _pair_row(p: PairAnswer, decimals: int) -> tuple[str, ...]:
-    verdict = p.verdict.upper() if p.verdict == _MATTERS else p.verdict
-    if p.reason:
-        verdict = f"{verdict}: {p.reason}"
     return (
         f"{p.b} minus {p.a}",
         number(p.difference, decimals),
         interval(p.lower, p.upper, decimals),
         p_value(p.p_value),
-        verdict,
+        verdict_words(p),
     )
+
+
+def verdict_words(p: PairAnswer) -> str:
+    """The verdict on a pair as it stands in a table."""
+    if p.reason:
+        return f"{p.verdict}: {p.reason}"
+    if p.verdict == "equivalent" and p.differs:
+        return "equivalent: differs, by less than matters"
+    return p.verdict.upper() if p.verdict == _MATTERS else p.verdict
 
 
 def _spread(conclusion: Conclusion, subject: Subject) -> list[str]:

@@ -52,9 +52,12 @@ def _why(entry: TrailEntry) -> str:
 def verification_text(report: Verification) -> list[str]:
     """What was checked, by number, with every finding under its check."""
     ledger = report.ledger
-    lines = [
-        f"{count(ledger.entries, 'entry', 'entries')}, {count(ledger.rows, 'row')}, {count(report.conclusions, 'conclusion')}"
-    ]
+    sizes = (
+        count(ledger.entries, "entry", "entries"),
+        count(ledger.rows, "row"),
+        count(report.conclusions, "conclusion"),
+    )
+    lines = [f"{', '.join(sizes)} checked"]
     for number, what in enumerate(CHECKS, 1):
         found = [f for f in report.findings if f.check == number]
         lines.append(f"{number}. {what}: {'good' if not found else count(len(found), 'finding')}")

@@ -1,0 +1,61 @@
+"""The command line: one command group a file; no rule of the laboratory lives here.
+
+Messages go to standard error, data to standard output. Exit codes: 0 done; 1 the answer is no; 2 the call was wrong;
+3 the store cannot be used. This file turns an error into a message and a code, once.
+"""
+
+from __future__ import annotations
+
+import sys
+
+import click
+import typer
+
+from sameline.cli import ask, audit, bench, correct, files, register, setup, tour
+from sameline.errors import FindingsError, SamelineError
+
+app = typer.Typer(
+    name="sameline",
+    help="Records of a quality-control laboratory, and the defended answer to: which lots really differ?",
+    no_args_is_help=True,
+    pretty_exceptions_enable=False,
+    context_settings={"help_option_names": ["-h", "--help"]},
+)
+for group in (setup, register, bench, files, correct, ask, audit, tour):
+    group.add_to(app)
+
+
+def main() -> None:
+    """Run the command line and end the process with its exit code."""
+    sys.exit(run(sys.argv[1:]))
+
+
+def run(arguments: list[str]) -> int:
+    """Run one command; returns the exit code."""
+    try:
+        return app(arguments, standalone_mode=False) or 0
+    except SamelineError as error:
+        say_error(error)
+        return error.exit_code
+    except click.exceptions.Exit as stop:
+        return stop.exit_code
+    except click.ClickException as error:
+        error.show()
+        return 2
+    except (KeyboardInterrupt, click.Abort):
+        typer.echo("stopped; what was not confirmed is not recorded", err=True)
+        return 130
+    except BrokenPipeError:
+        sys.stderr.close()
+        return 0
+
+
+def say_error(error: SamelineError) -> None:
+    """Write what is wrong, where, and what to do; every finding on a line of its own."""
+    place = f"{error.where}: " if error.where else ""
+    typer.echo(f"sameline: {place}{error.message}", err=True)
+    if isinstance(error, FindingsError):
+        for finding in error.findings:
+            typer.echo(f"  {finding}", err=True)
+    if error.advice:
+        typer.echo(f"  {error.advice}", err=True)

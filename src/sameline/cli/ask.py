@@ -1,0 +1,176 @@
+"""`sameline compare`, `differ`, `history`: a question, its answer, and how the answer came about."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Annotated
+
+import typer
+
+from sameline.cli.common import (
+    DEFAULT_STORE,
+    AsOfOption,
+    ByOption,
+    JsonOption,
+    MaybeReasonOption,
+    StoreOption,
+    open_store,
+    say,
+    say_changes,
+    write,
+    write_json,
+)
+from sameline.errors import CallError
+
+if TYPE_CHECKING:
+    from sameline.lab import Lab
+
+
+def add_to(app: typer.Typer) -> None:
+    """Add this file's commands."""
+    app.command()(compare)
+    app.command()(differ)
+    app.command()(history)
+
+
+def compare(
+    name: Annotated[str, typer.Argument(help="The comparison's name.")],
+    characteristic: Annotated[str, typer.Option("--characteristic", "-c", help="Code of what is compared.")],
+    groups: Annotated[
+        list[str] | None, typer.Argument(help="Codes of the groups; all that pass the filter if left out.")
+    ] = None,
+    of: Annotated[str, typer.Option(help="What the groups are: batch, material or supplier.")] = "batch",
+    material: Annotated[str | None, typer.Option(help="Only batches of this material.")] = None,
+    supplier: Annotated[str | None, typer.Option(help="Only batches from this supplier.")] = None,
+    tested_from: Annotated[str | None, typer.Option(help="Only runs tested from this day on.")] = None,
+    model: Annotated[
+        str | None, typer.Option(help="nested (runs within batches; the default), pooled, unequal or ranks.")
+    ] = None,
+    procedure: Annotated[
+        str | None,
+        typer.Option(
+            help="tukey-kramer, dunnett, bonferroni, holm, sidak, games-howell, welch-holm, steel-dwass or dunn."
+        ),
+    ] = None,
+    unit: Annotated[
+        str, typer.Option(help="Without nesting, what counts as one value: run, batch or replicate.")
+    ] = "run",
+    alpha: Annotated[float, typer.Option(help="Family error rate.")] = 0.05,
+    control: Annotated[str | None, typer.Option(help="Code of the group that the others are compared with.")] = None,
+    alternative: Annotated[str, typer.Option(help="With a control: two-sided, less or greater.")] = "two-sided",
+    margin: Annotated[
+        float | None, typer.Option(help="Smallest difference that matters; the characteristic's if left out.")
+    ] = None,
+    reason: MaybeReasonOption = None,
+    as_json: JsonOption = False,
+    store: StoreOption = DEFAULT_STORE,
+    by: ByOption = None,
+) -> None:
+    """State a comparison before its data; stated again, it is a new revision and the old one stays."""
+    from sameline.conclusions.statements import settled
+    from sameline.records.comparisons import Statement
+
+    with open_store(store, by) as lab:
+        statement = settled(
+            Statement(
+                name=name,
+                characteristic=characteristic,
+                grouping=of,
+                groups=tuple(groups or ()),
+                of_material=material,
+                of_supplier=supplier,
+                tested_from=lab.moment(tested_from),
+                unit=unit,
+                alpha=alpha,
+                control=control,
+                alternative=alternative,
+                margin=margin,
+            ),
+            model=model,
+            procedure=procedure,
+        )
+        outcome = lab.compare(statement, reason=reason)
+    say(f"{name}: stated, entry {outcome.entry} ({statement.procedure} on the {statement.model} model)")
+    say_changes(outcome, as_json=as_json)
+
+
+def differ(
+    name: Annotated[str | None, typer.Argument(help="The comparison; every comparison in a table if left out.")] = None,
+    version: Annotated[int | None, typer.Option(help="This version of its conclusion instead of the latest.")] = None,
+    all_pairs: Annotated[bool, typer.Option("--all", help="List the pairs that are not shown to differ too.")] = False,
+    contrast: Annotated[
+        str | None,
+        typer.Option(help="Show beside it what a single look on replicates, or on runs, as independent would say."),
+    ] = None,
+    as_of: AsOfOption = None,
+    as_json: JsonOption = False,
+    store: StoreOption = DEFAULT_STORE,
+) -> None:
+    """Which differ? The groups in order of mean, the lines under them, and the pairs that are shown to differ."""
+    with open_store(store) as lab:
+        if name is None:
+            _overview(lab, as_of, as_json=as_json)
+        else:
+            _one(lab, name, version, as_of, contrast, all_pairs=all_pairs, as_json=as_json)
+
+
+def _overview(lab: Lab, as_of: str | None, *, as_json: bool) -> None:
+    rows = lab.overview(as_of)
+    if as_json:
+        from sameline.reports.documents import overview_document
+
+        write_json(overview_document(rows))
+        return
+    from sameline.reports.differ import overview_text
+
+    write(overview_text(rows))
+
+
+def _one(
+    lab: Lab, name: str, version: int | None, as_of: str | None, contrast: str | None, *, all_pairs: bool, as_json: bool
+) -> None:
+    conclusion = lab.conclusion(name, version, as_of)
+    subject, behind = lab.subject(conclusion), lab.is_behind(conclusion) and version is None and as_of is None
+    naive = None if contrast is None else lab.contrast(conclusion, _contrast_unit(contrast))
+    if as_json:
+        from dataclasses import asdict
+
+        from sameline.reports.documents import conclusion_document
+
+        document = conclusion_document(conclusion, subject, behind=behind)
+        if naive is not None:
+            document["contrast"] = {"units": contrast, "pairs": [asdict(pair) for pair in naive.pairs]}
+        write_json(document)
+        return
+    from sameline.reports.differ import contrast_text, differ_text
+
+    write(differ_text(conclusion, subject, behind=behind, all_pairs=all_pairs))
+    if naive is not None:
+        write(contrast_text(conclusion, naive, subject, _contrast_unit(contrast or "")))
+
+
+def _contrast_unit(word: str) -> str:
+    unit = {"replicates": "replicate", "replicate": "replicate", "runs": "run", "run": "run", "run means": "run"}.get(
+        word
+    )
+    if unit is None:
+        raise CallError(f"there is no contrast {word!r}", advice="one of replicates, runs")
+    return unit
+
+
+def history(
+    name: Annotated[str, typer.Argument(help="The comparison.")],
+    as_of: AsOfOption = None,
+    as_json: JsonOption = False,
+    store: StoreOption = DEFAULT_STORE,
+) -> None:
+    """List the versions of a conclusion: when, by whose act, at which look, which verdicts turned and why."""
+    with open_store(store) as lab:
+        versions = lab.history(name, as_of)
+    if as_json:
+        from sameline.reports.documents import history_document
+
+        write_json(history_document(versions))
+        return
+    from sameline.reports.history import history_text
+
+    write(history_text(versions))

@@ -1,0 +1,189 @@
+"""The reading half of a laboratory's face."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from typing import TYPE_CHECKING, Any
+
+from sameline.errors import CallError
+from sameline.records import comparisons, concluded, registry, runs, scope
+from sameline.records.lookups import read_facts, read_register
+from sameline.records.moments import read_moment
+from sameline.records.store import Reading, Store
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+    from sameline.conclusions.recompute import Verification
+    from sameline.records.answers import Answer, Conclusion
+    from sameline.records.drafts import DraftMeasurement, Register
+    from sameline.records.runs import Measurement
+    from sameline.records.trail import TrailEntry
+    from sameline.reports.subject import Subject
+
+
+class Reads:
+    """What is recorded, as of now or of any moment.
+
+    Args:
+        store: the open store.
+        clock: gives the present moment (UTC, ISO 8601).
+    """
+
+    def __init__(self, store: Store, clock: Callable[[], str]) -> None:
+        self._store = store
+        self._clock = clock
+
+    @contextmanager
+    def reading(self, as_of: int | str | None = None) -> Iterator[Reading]:
+        """A view of the records, as of a ledger entry or a moment if one is given."""
+        with self._store.reading(as_of) as reading:
+            yield reading
+
+    @contextmanager
+    def register(self) -> Iterator[Register]:
+        """What is registered and recorded, as intake needs it; good inside the block."""
+        with self.reading() as reading:
+            yield read_register(reading, self._clock())
+
+    def listing(self, kind: str, as_of: int | str | None = None) -> list[dict[str, Any]]:
+        """All that is registered of a kind."""
+        with self.reading(as_of) as reading:
+            return registry.listing(reading, registry.KINDS[kind])
+
+    def measurements(self, as_of: int | str | None = None) -> pd.DataFrame:
+        """Every replicate as it holds, one row each: see `sameline.reports.frames`."""
+        from sameline.reports.frames import measurement_frame
+
+        with self.reading(as_of) as reading:
+            return measurement_frame(reading)
+
+    def conclusion(self, name: str, version: int | None = None, as_of: int | str | None = None) -> Conclusion:
+        """The latest conclusion of a comparison, or one version of it.
+
+        Raises:
+            CallError: there is no such comparison, or it has no such version.
+        """
+        with self.reading(as_of) as reading:
+            comparison = comparisons.find_comparison(reading.connection, name)
+            if version is not None:
+                return concluded.version_of(reading, comparison, version)
+            found = concluded.latest(reading, comparison)
+        if found is None:
+            raise CallError(f"{name!r} had no conclusion by then", advice="`sameline history NAME` lists the versions")
+        return found
+
+    def overview(self, as_of: int | str | None = None) -> list[tuple[str, Conclusion | None, bool]]:
+        """Every comparison: its name, its latest conclusion, and whether it is behind."""
+        with self.reading(as_of) as reading:
+            late = set(scope.behind(reading))
+            stated = comparisons.stated_names(reading)
+            return [(name, concluded.latest(reading, number), number in late) for number, name in stated]
+
+    def history(self, name: str, as_of: int | str | None = None) -> list[Conclusion]:
+        """Every version of a comparison's conclusion, oldest first."""
+        with self.reading(as_of) as reading:
+            return concluded.versions(reading, comparisons.find_comparison(reading.connection, name))
+
+    def subject(self, conclusion: Conclusion) -> Subject:
+        """What a conclusion is about: the question as it was revised then, and its characteristic."""
+        from sameline.reports.subject import read_subject
+
+        with self.reading() as reading:
+            return read_subject(reading, conclusion)
+
+    def contrast(self, conclusion: Conclusion, unit: str) -> Answer:
+        """What a single look would say that takes each `unit` ("replicate" or "run") as independent evidence.
+
+        It is for contrast with the recorded conclusion, and is not recorded.
+        """
+        from sameline.conclusions.conclude import naive_answer
+
+        with self.reading() as reading:
+            return naive_answer(reading, conclusion, unit)
+
+    def is_behind(self, conclusion: Conclusion) -> bool:
+        """Whether the comparison of a conclusion is behind the records."""
+        with self.reading() as reading:
+            return conclusion.comparison in scope.behind(reading)
+
+    def trail(self, as_of: int | str | None = None, **only: Any) -> list[TrailEntry]:  # noqa: ANN401 - see read_trail
+        """The audit trail, oldest entry first; the filters are those of `sameline.records.trail.read_trail`."""
+        from sameline.records.trail import read_trail
+
+        with self.reading(as_of) as reading:
+            if only.get("comparison") is not None:
+                only["comparison"] = comparisons.find_comparison(reading.connection, only["comparison"])
+            zone = runs.laboratory_zone(reading.connection)
+            moments = {w: read_moment(only[w], zone) for w in ("since", "until") if only.get(w) is not None}
+            return read_trail(reading, **{**only, **moments})
+
+    def verify(self, progress: Callable[[str, int, int], None] | None = None) -> Verification:
+        """Check the ledger against the rows, and recompute every conclusion: every finding, not only the first."""
+        from sameline.conclusions.recompute import verify
+
+        return verify(self._store, progress)
+
+    def moment(self, text: str | None) -> str | None:
+        """A moment as a person writes it, as the store keeps it; without a zone it is in the laboratory's."""
+        if text is None:
+            return None
+        with self.reading() as reading:
+            return read_moment(text, runs.laboratory_zone(reading.connection))
+
+    def named(
+        self, *, run: int | None = None, replicate: int | None = None, batch: str | None = None
+    ) -> tuple[str, dict[str, int]]:
+        """A replicate (of a run), a run, or a batch, by what a person calls it: its words, and its id by kind.
+
+        Raises:
+            CallError: nothing or several things are named, or it is not there.
+        """
+        if (run is None) == (batch is None) or (replicate is not None and run is None):
+            raise CallError("name one thing", advice="--run, --run with --replicate, or --batch")
+        if batch is not None:
+            with self.reading() as reading:
+                return f"batch {batch}", {"batch": registry.find(reading.connection, registry.KINDS["batch"], batch)}
+        found = self.find_measurements(run or 0, replicate)
+        if replicate is None:
+            return f"run {run}", {"run": found[0].run}
+        return f"run {run}, replicate {replicate}", {"measurement": found[0].id}
+
+    def corrected(self, run: int, replicate: int, text: str) -> tuple[Measurement, DraftMeasurement]:
+        """A recorded replicate, and the value that a person says it should have had, checked as any value is.
+
+        Raises:
+            FindingsError: the text is no value of this characteristic.
+        """
+        from sameline.intake.bench import read_corrected
+
+        measurement = self.find_measurements(run, replicate)[0]
+        with self.reading() as reading:
+            facts = read_facts(reading, measurement.characteristic)
+        return measurement, read_corrected(facts, replicate, text)
+
+    def find_run(self, batch: str, characteristic: str, tested_at: str) -> int:
+        """The number of the run of a batch and characteristic tested at a moment.
+
+        Raises:
+            CallError: there is none, or a code is not registered.
+        """
+        with self.reading() as reading:
+            return runs.find_run(
+                reading, batch, characteristic, read_moment(tested_at, runs.laboratory_zone(reading.connection))
+            )
+
+    def find_measurements(self, run: int, replicate: int | None = None) -> list[Measurement]:
+        """The replicates of a run as they hold, or one of them.
+
+        Raises:
+            CallError: there is no such run or replicate.
+        """
+        with self.reading() as reading:
+            found = runs.read_measurements(reading, runs=[run])
+        kept = [m for m in found if replicate in (None, m.replicate)]
+        if not kept:
+            what = f"run {run}" if not found else f"replicate {replicate} in run {run}"
+            raise CallError(f"there is no {what}", advice="`sameline runs` lists the runs with their numbers")
+        return kept
