@@ -18,7 +18,7 @@ from sameline.stats.verdicts import check_alpha, check_margin
 MOST_GROUPS = 2000  # almost two million pairs; more is a slip in the choice of groups, and would fill the memory
 
 
-def compare_pairs(  # noqa: PLR0917 - the published signature
+def compare_pairs(
     values: Iterable[Any],
     groups: Iterable[Any],
     procedure: str = "tukey-kramer",
