@@ -51,4 +51,4 @@ def closed_form(layout: Layout) -> NDArray[np.float64]:
             blocks.append((low[0] + high[0], low[1] + high[1], low[2] + high[2]))
     expected = [square / freedom for square, freedom, members in blocks for _ in range(members)]
     components = -np.diff(np.array(expected))
-    return np.append(components / unit[:-1], expected[-1])
+    return np.append(components / unit[:-1] + 0.0, expected[-1])  # + 0.0: no minus before a zero

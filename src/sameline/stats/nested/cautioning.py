@@ -13,21 +13,26 @@ if TYPE_CHECKING:
 
     from sameline.stats.nested.estimate import Estimate
     from sameline.stats.nested.known_spread import KnownSpread
-    from sameline.stats.nested.levels import Chain
+    from sameline.stats.nested.levels import Chain, Collapsed
 
 FAR_APART = 2.0
 FEW_DF = 3.0
 
 
-def of_fit(chain: Chain, estimate: Estimate, known: KnownSpread | None, *, used: bool) -> tuple[Caution, ...]:
+def of_fit(
+    chain: Chain,
+    collapsed: tuple[Collapsed, ...],
+    estimate: Estimate,
+    unused: KnownSpread | None,
+    used: KnownSpread | None,
+) -> tuple[Caution, ...]:
     """All cautions of one fit, in a fixed order."""
-    found: list[Caution] = [*_levels(chain), *_labels(chain), *_degrees_of_freedom(estimate)]
-    found += _known(known, used=used)
+    found = [*_levels(chain, collapsed), *_labels(chain), *_degrees_of_freedom(estimate), *_known(unused, used)]
     return tuple(found)
 
 
-def _levels(chain: Chain) -> Iterator[Caution]:
-    for gone in chain.collapsed:
+def _levels(chain: Chain, collapsed: tuple[Collapsed, ...]) -> Iterator[Caution]:
+    for gone in collapsed:
         yield Caution(f"collapsed-{gone.level}", gone.meaning)
     rows = chain.rows
     if len(rows.groups) < 2:
@@ -80,15 +85,13 @@ def _degrees_of_freedom(estimate: Estimate) -> Iterator[Caution]:
         )
 
 
-def _known(known: KnownSpread | None, *, used: bool) -> Iterator[Caution]:
-    if known is None:
-        return
-    if not used:
+def _known(unused: KnownSpread | None, used: KnownSpread | None) -> Iterator[Caution]:
+    if unused is not None:
         yield Caution("known-spread-unused", "the known run-to-run spread was not needed: the runs here show their own")
-        return
-    source = known.source or ", ".join(known.batches)
-    yield Caution(
-        "known-spread",
-        f"the run-to-run spread is not from these data but from {source} (standard deviation {known.run**0.5:.4g}, "
-        f"{known.df:.3g} degrees of freedom)",
-    )
+    if used is not None:
+        source = used.source or ", ".join(used.batches)
+        yield Caution(
+            "known-spread",
+            f"the run-to-run spread is not from these data but from {source} (standard deviation {used.run**0.5:.4g}, "
+            f"{used.df:.3g} degrees of freedom)",
+        )

@@ -54,9 +54,8 @@ def nested_criterion(layout: Layout, theta: NDArray[np.float64]) -> Criterion:
     residual = jets.component(theta, t - 1)
     variance = _variance(layout, theta)
     a = variance.reciprocal()
-    weighted = [a.scaled(each).summed(layout.cell_starts) for each in (layout.count, layout.first, layout.second)]
-    w, u, q = weighted
-    determinant = variance.log().scaled(layout.count).total() + residual.log().scaled(layout.within_df)
+    w, u, q = (a.mapped(weights) for weights in layout.by_size)
+    determinant = variance.log().scaled(layout.size_totals).total() + residual.log().scaled(layout.within_df)
     if t > 2:
         top = jets.component(theta, 0)
         shrink = (top * w + jets.constant(1.0, t)).reciprocal()
@@ -83,10 +82,10 @@ def nested_criterion(layout: Layout, theta: NDArray[np.float64]) -> Criterion:
 
 
 def _variance(layout: Layout, theta: NDArray[np.float64]) -> Jet:
-    """Variance of a lower mean about its upper unit, per cell."""
-    slope = np.zeros((theta.size, layout.size.size))
-    slope[-1] = 1.0 / layout.size
-    value = theta[-1] / layout.size
+    """Variance of a lower mean about its upper unit, for each size of lower units."""
+    slope = np.zeros((theta.size, layout.sizes.size))
+    slope[-1] = 1.0 / layout.sizes
+    value = theta[-1] / layout.sizes
     if theta.size > 1:
         slope[-2] = 1.0
         value = value + theta[-2]

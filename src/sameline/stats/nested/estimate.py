@@ -13,11 +13,15 @@ from sameline.stats.nested.criterion import nested_criterion
 from sameline.stats.nested.kenward_roger import kenward_roger
 from sameline.stats.nested.reml import minimise
 from sameline.stats.nested.satterthwaite import satterthwaite
+from sameline.stats.nested.unweighted import MeanSquares, unweighted_mean_squares
 
 if TYPE_CHECKING:
+    from collections.abc import Callable
+
     from numpy.typing import NDArray
 
     from sameline.stats.nested.layout import Layout
+    from sameline.stats.nested.reml import Evaluated
 
 DF_METHODS = ("kenward-roger", "satterthwaite")
 WHOLE = 1e-9
@@ -36,6 +40,8 @@ class Estimate:
         expected: inverse expected information of all components, shape (t, t).
         observed: inverse observed information of those above zero, shape (t, t), zero elsewhere.
         exact_df: degrees of freedom where they are known exactly (one component only).
+        squares: mean squares for intervals of the components, for nested data.
+        criterion_at: the criterion as a function, for designs without such mean squares.
     """
 
     random: tuple[str, ...]
@@ -46,6 +52,8 @@ class Estimate:
     expected: NDArray[np.float64]
     observed: NDArray[np.float64]
     exact_df: float | None = None
+    squares: MeanSquares | None = None
+    criterion_at: Callable[[NDArray[np.float64]], Evaluated] | None = None
 
     def judged(self, contrasts: Contrasts, method: str) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
         """Standard errors and degrees of freedom of m contrasts by one of `DF_METHODS`, shape (m,) each."""
@@ -67,11 +75,12 @@ def estimate_nested(layout: Layout, place: NDArray[np.intp]) -> Estimate:
         place: canonical code of each group in the order wanted, shape (k,).
     """
     t = len(layout.random)
+    squares = unweighted_mean_squares(layout)
     if has_closed_form(layout):
         theta = closed_form(layout)
         found = nested_criterion(layout, theta)
     else:
-        theta, found = minimise(lambda at: nested_criterion(layout, at), starting_points(layout))
+        theta, found = minimise(lambda at: nested_criterion(layout, at), starting_points(squares))
     return Estimate(
         random=layout.random,
         theta=theta,
@@ -81,22 +90,16 @@ def estimate_nested(layout: Layout, place: NDArray[np.intp]) -> Estimate:
         expected=inverse(found.information),
         observed=inverse_of_free(0.5 * found.hessian, theta > 0.0),
         exact_df=float(layout.values - layout.k) if t == 1 else None,
+        squares=squares,
     )
 
 
-def starting_points(layout: Layout) -> list[NDArray[np.float64]]:
-    """Where the search starts: all spread shared evenly, all in the residual, nearly all above it."""
-    t = len(layout.random)
-    per_upper = np.add.reduceat(layout.count * layout.size, layout.cell_starts)
-    starts = layout.upper_starts
-    mean = np.add.reduceat(layout.centre * per_upper, starts) / np.add.reduceat(per_upper, starts)
-    between = layout.centre - np.repeat(mean, np.diff(np.append(starts, layout.centre.size)))
-    total = layout.within_ss + float(np.sum(layout.size * layout.second)) + float(np.sum(per_upper * between**2))
-    scale = total / (layout.values - layout.k)
-    mostly_residual = np.array([1e-3] * (t - 1) + [1.0])
-    within = layout.within_ss / layout.within_df if layout.within_df else scale
-    shares = np.append(np.full(t - 1, scale), max(within, 1e-6 * scale))
-    return [shares, scale * mostly_residual]
+def starting_points(squares: MeanSquares) -> list[NDArray[np.float64]]:
+    """Where the search starts: the mean squares' own estimate, and nearly all spread in the residual."""
+    moments = np.linalg.solve(squares.expectation, squares.value)
+    scale = float(np.abs(moments).sum())
+    residual = np.append(np.full(moments.size - 1, 1e-3), 1.0)
+    return [np.maximum(moments, 1e-3 * scale * residual), scale * residual]
 
 
 def inverse(information: NDArray[np.float64]) -> NDArray[np.float64]:

@@ -16,13 +16,16 @@ from typing import TYPE_CHECKING, Any
 
 from sameline.errors import StatsError
 from sameline.stats.nested import cautioning
+from sameline.stats.nested.components import ComponentTable, component_table
 from sameline.stats.nested.estimate import DF_METHODS, Estimate, estimate_nested
 from sameline.stats.nested.known_spread import KnownSpread, estimate_with
 from sameline.stats.nested.layout import layout_of
-from sameline.stats.nested.levels import Chain, Collapsed, chain_of
+from sameline.stats.nested.levels import Chain, Collapsed, chain_of, session_collapsed
 from sameline.stats.nested.means import NestedMeans, means_of
 from sameline.stats.nested.pairs import Asked, NestedPairs, pairs_of
-from sameline.stats.nested.rows import read_rows
+from sameline.stats.nested.pseudo_replication import ReplicatesAsUnits, replicates_as_units
+from sameline.stats.nested.rows import Rows, read_rows
+from sameline.stats.nested.sessions import estimate_crossed
 from sameline.stats.verdicts import check_alpha, check_margin
 
 if TYPE_CHECKING:
@@ -60,7 +63,7 @@ class NestedFit:
     known: KnownSpread | None
     unseen: str | None
     _estimate: Estimate
-    _chain: Chain
+    _rows: Rows
 
     def means(self, alpha: float = 0.05) -> NestedMeans:
         """Group means with 1 - alpha intervals, each for itself.
@@ -68,7 +71,23 @@ class NestedFit:
         Raises:
             StatsError: alpha is not between 0 and 1.
         """
-        return means_of(self._estimate, self._chain.rows, self.df_method, alpha, self.unseen)
+        return means_of(self._estimate, self._rows, self.df_method, alpha, self.unseen)
+
+    def spread(self, alpha: float = 0.05) -> ComponentTable:
+        """Components as standard deviations with 1 - alpha intervals, and as repeatability and intermediate precision.
+
+        Raises:
+            StatsError: alpha is not between 0 and 1.
+        """
+        return component_table(self._estimate, self.collapsed, alpha)
+
+    def replicates_as_units(self, alpha: float = 0.05) -> ReplicatesAsUnits | None:
+        """What taking replicates for independent evidence would do to the intervals; None where replicates are units.
+
+        Raises:
+            StatsError: alpha is not between 0 and 1.
+        """
+        return replicates_as_units(self._estimate, self._rows, self.df_method, alpha) if self.unseen is None else None
 
     def pairs(
         self,
@@ -128,27 +147,38 @@ def fit_nested(
         )
     rows = read_rows(values, groups, batches, runs, sessions)
     chain = chain_of(rows, spread_known=known is not None)
-    hidden = next((gone for gone in chain.collapsed if gone.level == "run" and gone.into == "group"), None)
-    used = known if hidden else None
+    merged = session_collapsed(chain)
+    collapsed = chain.collapsed if merged is None else (*chain.collapsed, merged)
+    hidden = [gone for gone in collapsed if gone.level in {"run", "session"} and gone.into == "group"]
+    used = known if any(gone.level == "run" for gone in hidden) else None
     if not chain.random and used is None:
         raise StatsError(
             "there is one value a group: no replication at any level to judge a difference by",
             where="values",
             advice="test at least one group in a second run, or bring a known run-to-run spread",
         )
-    estimate = estimate_with(chain, used) if used else estimate_nested(layout_of(chain), rows.place)
-    unseen = None if used or not hidden or len(rows.groups) == 1 else hidden.meaning
+    estimate = _estimated(chain, used, crossed="session" in rows.units and merged is None)
+    blind = [gone.meaning for gone in hidden if not (used and gone.level == "run")]
+    unseen = "; ".join(blind) if blind and len(rows.groups) > 1 else None
     return NestedFit(
         groups=rows.groups,
         components=MappingProxyType(dict(zip(estimate.random, estimate.theta.tolist(), strict=True))),
-        collapsed=chain.collapsed,
+        collapsed=collapsed,
         at_zero=tuple(n for n, v in zip(estimate.random, estimate.theta, strict=True) if v <= 0.0),
         df_method=df,
         reml_criterion=estimate.criterion,
         counts=MappingProxyType({level: rows.count(level) for level in rows.units}),
-        cautions=cautioning.of_fit(chain, estimate, known, used=used is not None),
+        cautions=cautioning.of_fit(chain, collapsed, estimate, known if known is not used else None, used),
         known=used,
         unseen=unseen,
         _estimate=estimate,
-        _chain=chain,
+        _rows=rows,
     )
+
+
+def _estimated(chain: Chain, known: KnownSpread | None, *, crossed: bool) -> Estimate:
+    if known:
+        return estimate_with(chain, known)
+    if crossed:
+        return estimate_crossed(chain, chain.rows.place)
+    return estimate_nested(layout_of(chain), chain.rows.place)

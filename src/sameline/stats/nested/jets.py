@@ -18,6 +18,7 @@ import numpy as np
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
+    from scipy.sparse import csr_array
 
 
 @dataclass(frozen=True, slots=True)
@@ -72,6 +73,13 @@ class Jet:
     def taken(self, at: NDArray[np.intp]) -> Jet:
         """The values at some places, shape (m,)."""
         return Jet(self.value[at], self.slope[:, at], self.curve[:, :, at])
+
+    def mapped(self, weights: csr_array) -> Jet:
+        """Weighted sums, `weights` of shape (m, n)."""
+        t, n = self.slope.shape
+        rows = weights @ np.concatenate((self.value[None], self.slope, self.curve.reshape(t * t, n))).T
+        columns = np.ascontiguousarray(rows.T)
+        return Jet(columns[0], columns[1 : t + 1], columns[t + 1 :].reshape(t, t, -1))
 
     def total(self) -> Jet:
         """Sum of all n values, shape (1,)."""

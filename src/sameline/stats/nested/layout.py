@@ -12,6 +12,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
+from scipy.sparse import csr_array
 
 from sameline.stats.nested.levels import first_of
 
@@ -35,6 +36,9 @@ class Layout:
         count: lower units in a cell.
         first: sum of (lower mean - centre of the upper unit) over a cell.
         second: sum of squares of the same.
+        sizes: the different sizes of lower units, shape (d,).
+        size_totals: lower units of each size, shape (d,).
+        by_size: count, first and second as sparse matrices, upper units by sizes, shape (u, d) each.
         cell_starts: first cell of each upper unit, shape (u,).
         centre: centre of each upper unit about the origin, shape (u,).
         upper_starts: first upper unit of each group, shape (k,).
@@ -51,6 +55,9 @@ class Layout:
     count: NDArray[np.float64]
     first: NDArray[np.float64]
     second: NDArray[np.float64]
+    sizes: NDArray[np.float64]
+    size_totals: NDArray[np.float64]
+    by_size: tuple[csr_array, csr_array, csr_array]
     cell_starts: NDArray[np.intp]
     centre: NDArray[np.float64]
     upper_starts: NDArray[np.intp]
@@ -110,6 +117,13 @@ def layout_of(chain: Chain) -> Layout:
     key = of_upper * (int(units.size.max()) + 1) + units.size
     keys, cell = np.unique(key, return_inverse=True)
     cell_upper, size = np.divmod(keys, int(units.size.max()) + 1)
+    count = np.bincount(cell).astype(float)
+    first = np.bincount(cell, deviation).astype(float)
+    second = np.bincount(cell, deviation * deviation).astype(float)
+    sizes, which = np.unique(size, return_inverse=True)
+    cell_starts = first_of(cell_upper)
+    edges = np.append(cell_starts, size.size)
+    shape = (cell_starts.size, sizes.size)
     group_of_upper = rows.units["group"][units.starts][upper_first]
     return Layout(
         random=random,
@@ -118,10 +132,17 @@ def layout_of(chain: Chain) -> Layout:
         within_df=rows.y.size - units.size.size,
         log_sizes=float(np.log(units.size).sum()),
         size=size.astype(float),
-        count=np.bincount(cell).astype(float),
-        first=np.bincount(cell, deviation).astype(float),
-        second=np.bincount(cell, deviation * deviation).astype(float),
-        cell_starts=first_of(cell_upper),
+        count=count,
+        first=first,
+        second=second,
+        sizes=sizes.astype(float),
+        size_totals=np.bincount(which, count).astype(float),
+        by_size=(
+            csr_array((count, which, edges), shape=shape),
+            csr_array((first, which, edges), shape=shape),
+            csr_array((second, which, edges), shape=shape),
+        ),
+        cell_starts=cell_starts,
         centre=centre,
         upper_starts=first_of(group_of_upper),
         group_values=np.bincount(rows.units["group"]),

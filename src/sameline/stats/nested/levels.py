@@ -127,6 +127,28 @@ def _reduced(rows: Rows, random: tuple[str, ...]) -> tuple[Rows, Collapsed]:
     return replace(rows, y=rows.y[starts], units=units), Collapsed(level, "nothing", meaning)
 
 
+def session_collapsed(chain: Chain) -> Collapsed | None:
+    """Why the session has no component of its own, or None where it has one; None too without sessions."""
+    rows = chain.rows
+    if "session" not in rows.units:
+        return None
+    if len(rows.sessions) == 1:
+        return Collapsed("session", "nothing", "there is one session: what its batches share cancels in differences")
+    if _same_partition(rows.units["session"], rows.units["group"]):
+        meaning = "every group was tested in a session of its own: what sets sessions apart is in the differences"
+        return Collapsed("session", "group", meaning)
+    for level in chain.random[:-1]:
+        if _same_partition(rows.units["session"], rows.units[level]):
+            meaning = f"every {level} has a session of its own: the spread called {level} holds the sessions' as well"
+            return Collapsed("session", level, meaning)
+    return None
+
+
+def _same_partition(one: NDArray[np.intp], other: NDArray[np.intp]) -> bool:
+    both = np.unique(one * (int(other.max()) + 1) + other).size
+    return both == int(one.max()) + 1 == int(other.max()) + 1
+
+
 def first_of(unit: NDArray[np.intp]) -> NDArray[np.intp]:
     """Where each unit starts in a non-decreasing array of 0-based units without gaps."""
     return np.flatnonzero(np.diff(unit, prepend=-1))

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from sameline.stats.distributions import t_isf
+from sameline.stats.nested.frames import frame_of
 from sameline.stats.verdicts import check_alpha
 
 if TYPE_CHECKING:
@@ -43,10 +44,8 @@ class NestedMeans:
 
     def frame(self) -> pd.DataFrame:
         """Columns group, n, mean, standard_error, df, lower, upper."""
-        import pandas as pd
-
         names = ("group", "n", "mean", "standard_error", "df", "lower", "upper")
-        return pd.DataFrame({name: list(getattr(self, name)) for name in names})
+        return frame_of(names, list(zip(*(getattr(self, name) for name in names), strict=True)))
 
 
 def means_of(estimate: Estimate, rows: Rows, method: str, alpha: float, unseen: str | None) -> NestedMeans:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from types import MappingProxyType
 from typing import TYPE_CHECKING
 
@@ -12,6 +13,8 @@ from sameline.errors import StatsError
 from sameline.stats.columns import interval
 from sameline.stats.lines import Display, control_display, lines
 from sameline.stats.nested.adjustments import ADJUSTMENTS, FEWEST_DF, Family, adjusted
+from sameline.stats.nested.frames import frame_of
+from sameline.stats.pairs_result import Pair
 from sameline.stats.verdicts import verdicts
 
 if TYPE_CHECKING:
@@ -20,83 +23,68 @@ if TYPE_CHECKING:
     import pandas as pd
     from numpy.typing import NDArray
 
+    from sameline.stats.cautions import Caution
     from sameline.stats.nested.estimate import Estimate
     from sameline.stats.nested.fit import NestedFit
 
     Floats = NDArray[np.float64]
-    Maybe = tuple[float | None, ...]
 
 ALTERNATIVES = ("two-sided", "greater", "less")
 MOST_TUKEY_GROUPS = 200
-COLUMNS = (
-    "a",
-    "b",
-    "difference",
-    "standard_error",
-    "df",
-    "statistic",
-    "p_value",
-    "lower",
-    "upper",
-    "verdict",
-    "differs",
-)
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, eq=False)
 class NestedPairs:
-    """One entry a pair, (earlier, later) in order of first appearance, or (control, other).
+    """The pairs asked, (earlier, later) in order of first appearance, or (control, other).
 
     Args:
-        a: label of the first group.
-        b: label of the second.
-        difference: mean(b) - mean(a), in the values' unit.
-        standard_error: of the difference.
-        df: degrees of freedom.
-        statistic: difference over standard error.
-        p_value: adjusted for the family (raw with "none").
-        lower: lower end of the simultaneous interval, -inf where open; None where the procedure has none (Holm).
-        upper: upper end, likewise.
-        verdict: in the words of `sameline.stats.verdicts`.
-        differs: whether p_value < alpha.
+        pairs: one row a pair: a, b, difference = mean(b) - mean(a) in the values' unit, standard_error, df, statistic
+            (difference over standard error), p_value (adjusted for the family; raw with "none"), lower and upper end
+            of the simultaneous interval (infinite where open; None with Holm, which has none), verdict, differs
+            (p_value < alpha). None too where a pair cannot be judged.
         not_estimable: why a pair has no figures beside its difference.
-        display: lines or letters over the groups in order of mean.
+        labels: group labels in order of first appearance.
+        means: their means about a common origin, shape (k,).
         adjust: the adjustment.
         df_method: "kenward-roger" or "satterthwaite".
         alpha: error rate of the family.
         margin: smallest difference that matters, or None.
         control: the control, or None.
+        alternative: "two-sided", "greater" or "less".
+        cautions: those of the fit.
     """
 
-    a: tuple[str, ...]
-    b: tuple[str, ...]
-    difference: tuple[float, ...]
-    standard_error: Maybe
-    df: Maybe
-    statistic: Maybe
-    p_value: Maybe
-    lower: Maybe
-    upper: Maybe
-    verdict: tuple[str, ...]
-    differs: tuple[bool, ...]
+    pairs: tuple[Pair, ...]
     not_estimable: Mapping[tuple[str, str], str]
-    display: Display
+    labels: tuple[str, ...]
+    means: NDArray[np.float64]
     adjust: str
     df_method: str
     alpha: float
     margin: float | None
     control: str | None
+    alternative: str
+    cautions: tuple[Caution, ...]
+    statistic_name: str = "t"
+
+    @cached_property
+    def display(self) -> Display:
+        """Lines, or letters, or the matrix of pairs; a pair that cannot be judged is not shown to differ."""
+        place = {label: at for at, label in enumerate(self.labels)}
+        differs = np.zeros((len(self.labels), len(self.labels)), bool)
+        for pair in self.pairs:
+            differs[place[pair.a], place[pair.b]] = differs[place[pair.b], place[pair.a]] = pair.differs
+        draw = lines if self.control is None else control_display
+        return draw(self.labels, self.means, differs)
 
     @property
-    def lines(self) -> tuple[tuple[str, ...], ...]:
+    def lines(self) -> list[list[str]]:
         """Maximal sets of groups none of which is shown to differ from another, each in order of mean."""
-        return self.display.sets
+        return [list(members) for members in self.display.sets]
 
     def frame(self) -> pd.DataFrame:
-        """Columns a, b, difference, standard_error, df, statistic, p_value, lower, upper, verdict, differs."""
-        import pandas as pd
-
-        return pd.DataFrame({name: list(getattr(self, name)) for name in COLUMNS})
+        """One row a pair: the fields of `Pair`. Columns with a figure missing hold None there, never NaN."""
+        return frame_of(Pair._fields, self.pairs)
 
 
 @dataclass(frozen=True, slots=True)
@@ -131,25 +119,22 @@ def pairs_of(fit: NestedFit, estimate: Estimate, asked: Asked) -> NestedPairs:
             difference[usable], critical * error[usable], p[usable] < asked.alpha, asked.alternative
         )
     differs = p < asked.alpha
+    error, df = np.where(usable, error, np.nan), np.where(usable, df, np.nan)
+    figures = [_maybe(column) for column in (difference, error, df, t, p, low, high)]
+    first, second = ([fit.groups[at] for at in places.tolist()] for places in (a, b))
+    words = verdicts(low, high, asked.margin, differs)
     return NestedPairs(
-        a=tuple(fit.groups[at] for at in a.tolist()),
-        b=tuple(fit.groups[at] for at in b.tolist()),
-        difference=tuple(difference.tolist()),
-        standard_error=_maybe(np.where(usable, error, np.nan)),
-        df=_maybe(np.where(usable, df, np.nan)),
-        statistic=_maybe(t),
-        p_value=_maybe(p),
-        lower=_maybe(low),
-        upper=_maybe(high),
-        verdict=tuple(verdicts(low, high, asked.margin, differs)),
-        differs=tuple(differs.tolist()),
+        pairs=tuple(map(Pair._make, zip(first, second, *figures, words, differs.tolist(), strict=True))),
         not_estimable=MappingProxyType(reasons),
-        display=_display(fit.groups, estimate.means, _matrix(a, b, differs), asked.control),
+        labels=fit.groups,
+        means=estimate.means,
         adjust=asked.adjust,
         df_method=fit.df_method,
         alpha=asked.alpha,
         margin=asked.margin,
         control=asked.control,
+        alternative=asked.alternative,
+        cautions=fit.cautions,
     )
 
 
@@ -196,17 +181,6 @@ def _places(groups: tuple[str, ...], control: str | None) -> tuple[NDArray[np.in
     return np.full(others.shape, at), others
 
 
-def _matrix(a: NDArray[np.intp], b: NDArray[np.intp], differs: NDArray[np.bool_]) -> NDArray[np.bool_]:
-    k = int(max(a.max(), b.max())) + 1
-    matrix = np.zeros((k, k), bool)
-    matrix[a, b] = matrix[b, a] = differs
-    return matrix
-
-
-def _display(groups: tuple[str, ...], means: Floats, differs: NDArray[np.bool_], control: str | None) -> Display:
-    return lines(groups, means, differs) if control is None else control_display(groups, means, differs)
-
-
-def _maybe(column: Floats) -> Maybe:
+def _maybe(column: Floats) -> list[float | None]:
     """Numbers, with None where there is none."""
-    return tuple(None if each != each else each for each in column.tolist())  # noqa: PLR0124 - the test for NaN
+    return [None if each != each else each for each in column.tolist()]  # noqa: PLR0124 - the test for NaN

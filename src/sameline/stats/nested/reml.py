@@ -45,20 +45,24 @@ CLOSE, DONE = 1e-7, 1e-26
 
 
 def minimise(
-    evaluate: Callable[[NDArray[np.float64]], E], starts: Iterable[NDArray[np.float64]]
+    evaluate: Callable[[NDArray[np.float64]], E],
+    starts: Iterable[NDArray[np.float64]],
+    *,
+    last_positive: bool = True,
 ) -> tuple[NDArray[np.float64], E]:
     """The lowest of the minima reached from `starts`, and the criterion there.
 
     Args:
-        evaluate: the criterion at components of shape (t,), all >= 0 and the last > 0.
+        evaluate: the criterion at components of shape (t,), all >= 0.
         starts: components to start from; the first wins a tie.
+        last_positive: the last component is a residual, which may not become zero.
 
     Raises:
         StatsError: no start led to a minimum.
     """
     best: tuple[NDArray[np.float64], E] | None = None
     for start in starts:
-        found = _descend(evaluate, start)
+        found = _descend(evaluate, start, shrink=0.1 if last_positive else 0.0)
         if found and (best is None or found[1].value < best[1].value - 1e-9 * (1.0 + abs(best[1].value))):
             best = found
     if best is None:
@@ -71,7 +75,7 @@ def minimise(
 
 
 def _descend(
-    evaluate: Callable[[NDArray[np.float64]], E], start: NDArray[np.float64]
+    evaluate: Callable[[NDArray[np.float64]], E], start: NDArray[np.float64], shrink: float
 ) -> tuple[NDArray[np.float64], E] | None:
     theta, here = start, evaluate(start)
     last = np.inf
@@ -79,23 +83,23 @@ def _descend(
         step, decrement = _step(theta, here)
         if decrement <= DONE or (last < CLOSE and decrement >= last):
             return theta, here
-        trial = _moved(theta, step, 1.0)
-        there = evaluate(trial)
         length = 1.0
-        while decrement > CLOSE and there.value > here.value - 1e-4 * length * decrement:
+        trial = _moved(theta, step, shrink)
+        there = evaluate(trial)
+        while decrement > CLOSE and there.value > here.value + 1e-4 * float(here.gradient @ (trial - theta)):
             length *= 0.5
             if length < 1e-12:
                 return None
-            trial = _moved(theta, step, length)
+            trial = _moved(theta, length * step, shrink)
             there = evaluate(trial)
         theta, here, last = trial, there, decrement
     return None
 
 
-def _moved(theta: NDArray[np.float64], step: NDArray[np.float64], length: float) -> NDArray[np.float64]:
-    """Along the step, held at zero, and the residual at a tenth of what it was."""
-    moved = np.maximum(theta + length * step, 0.0)
-    moved[-1] = max(moved[-1], 0.1 * theta[-1])
+def _moved(theta: NDArray[np.float64], step: NDArray[np.float64], shrink: float) -> NDArray[np.float64]:
+    """Along the step, held at zero, and the last component at a share of what it was."""
+    moved = np.maximum(theta + step, 0.0)
+    moved[-1] = max(moved[-1], shrink * theta[-1])
     return moved
 
 

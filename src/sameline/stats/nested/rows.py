@@ -71,11 +71,11 @@ def read_rows(
     if n == 0:
         raise StatsError("there are no values", where="values", advice="give one number a row")
     codes = [_codes(name, given, n) for name, given in zip(_LEVELS, (groups, batches, runs, sessions), strict=True)]
-    (group_labels, g), (batch_labels, b), (_, r), (session_labels, s) = codes
-    batch, owner = _within(g, b)
+    (group_labels, g, place), (batch_labels, b, _), (_, r, _), (session_labels, s, _) = codes
+    batch, of_batch = _within(g, b)
     finest = batch if sessions is None else _within(batch, s)[0]
     finest = finest if runs is None else _within(finest, r)[0]
-    order = np.lexsort((y, finest))
+    order = _order(y, finest)
     units = {"group": g[order]}
     if batches is not None:
         units["batch"] = batch[order]
@@ -84,9 +84,6 @@ def read_rows(
     units["replicate"] = np.arange(n)
     if sessions is not None:
         units["session"] = s[order]
-    first = np.unique(g, return_index=True)[1]
-    place = np.argsort(first)
-    of_batch = b[owner]
     counts = np.bincount(of_batch)
     return Rows(
         y=y[order],
@@ -103,14 +100,16 @@ def read_rows(
 _LEVELS = ("groups", "batches", "runs", "sessions")
 
 
-def _codes(name: str, given: Iterable[Any] | None, n: int) -> tuple[tuple[str, ...], NDArray[np.intp]]:
-    """Labels in the order of their text and the code of each row; one common label where none was given."""
+def _codes(
+    name: str, given: Iterable[Any] | None, n: int
+) -> tuple[tuple[str, ...], NDArray[np.intp], NDArray[np.intp]]:
+    """Labels in the order of their text, the code of each row, and the codes in order of first appearance.
+
+    One common label stands in where none was given.
+    """
     if given is None:
-        return ("all",), np.zeros(n, np.intp)
-    try:
-        seen, codes = encode(given)
-    except StatsError as error:
-        raise StatsError(error.message, where=name, advice=error.advice) from error
+        return ("all",), np.zeros(n, np.intp), np.zeros(1, np.intp)
+    seen, codes = _encoded(name, given)
     if codes.size != n:
         raise StatsError(
             f"{codes.size} labels for {n} values", where=name, advice="give one label a value, in the same order"
@@ -120,11 +119,37 @@ def _codes(name: str, given: Iterable[Any] | None, n: int) -> tuple[tuple[str, .
     order = sorted(range(len(seen)), key=seen.__getitem__)
     rank = np.empty(len(seen), np.intp)
     rank[order] = np.arange(len(seen))
-    return tuple(seen[at] for at in order), rank[codes]
+    return tuple(seen[at] for at in order), rank[codes], rank
+
+
+def _encoded(name: str, given: Iterable[Any]) -> tuple[tuple[str, ...], NDArray[np.intp]]:
+    """`encode`, asked only about different labels where one type makes that safe, which is much faster."""
+    plain = list(given.tolist()) if isinstance(given, np.ndarray) and given.ndim == 1 else given
+    try:
+        if type(plain) is list and len(set(map(type, plain))) == 1:
+            place = {label: at for at, label in enumerate(dict.fromkeys(plain))}
+            seen, of_different = encode(list(place))
+            return seen, of_different[np.fromiter(map(place.__getitem__, plain), np.intp, len(plain))]
+        return encode(given)
+    except StatsError as error:
+        raise StatsError(error.message, where=name, advice=error.advice) from error
 
 
 def _within(outer: NDArray[np.intp], inner: NDArray[np.intp]) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
-    """Unit of each row where `inner` is nested in `outer`, and for each unit one row that belongs to it."""
-    key = outer * (int(inner.max()) + 1) + inner
-    _, first, unit = np.unique(key, return_index=True, return_inverse=True)
-    return unit.astype(np.intp, copy=False), first
+    """Unit of each row where `inner` is nested in `outer`, and the inner code of each unit."""
+    width = int(inner.max()) + 1
+    key = outer * width + inner
+    room = (int(outer.max()) + 1) * width
+    if room > 8 * key.size + 1024:
+        units, unit = np.unique(key, return_inverse=True)
+        return unit.astype(np.intp, copy=False), units % width
+    present = np.zeros(room, bool)
+    present[key] = True
+    return (np.cumsum(present) - 1)[key], np.flatnonzero(present) % width
+
+
+def _order(y: NDArray[np.float64], unit: NDArray[np.intp]) -> NDArray[np.intp]:
+    """Rows by unit, then by value; equal rows are alike, so their order does not matter."""
+    by_value = np.argsort(y)
+    small = unit.astype(np.uint16) if int(unit.max()) < 2**16 else unit  # 16 bits are sorted by counting
+    return by_value[np.argsort(small[by_value], kind="stable")]
