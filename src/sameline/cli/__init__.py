@@ -8,7 +8,6 @@ from __future__ import annotations
 
 import sys
 
-import click
 import typer
 
 from sameline.cli import ask, audit, bench, correct, files, register, setup, tour
@@ -37,12 +36,16 @@ def run(arguments: list[str]) -> int:
     except SamelineError as error:
         say_error(error)
         return error.exit_code
-    except click.exceptions.Exit as stop:
+    except typer.Exit as stop:
         return stop.exit_code
-    except click.ClickException as error:
-        error.show()
+    except typer.TyperException as error:
+        if not (message := error.format_message().rstrip(".")):
+            return 2  # a group called without a command has shown its help
+        typer.echo(f"sameline: {message}", err=True)
+        command = getattr(getattr(error, "ctx", None), "command_path", "sameline")
+        typer.echo(f"  `{command} --help` tells how it is called", err=True)
         return 2
-    except (KeyboardInterrupt, click.Abort):
+    except (KeyboardInterrupt, typer.Abort):
         typer.echo("stopped; what was not confirmed is not recorded", err=True)
         return 130
     except BrokenPipeError:

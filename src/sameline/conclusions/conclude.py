@@ -14,7 +14,7 @@ from sameline.records import concluded
 from sameline.records.acts import Act
 from sameline.records.answers import Answer, Conclusion
 from sameline.records.comparisons import Revision, read_revision
-from sameline.records.scope import touches_since
+from sameline.records.scope import behind, touches_since
 from sameline.records.store import Reading, Store
 from sameline.records.tables import entry
 
@@ -31,10 +31,13 @@ def bring_up_to_date(store: Store, comparison: int, *, by: str, at: str) -> Conc
         at: the moment (UTC, ISO 8601).
 
     Returns:
-        The new conclusion as recorded.
+        The conclusion as recorded: a new one, or where another process was faster, the one that it recorded.
     """
     with store.act(ACT, by=by, at=at) as act:
-        version = _conclude(act, comparison)
+        last = _last_if_up_to_date(act, comparison)
+        if last is not None:
+            act.abandon()
+        version = last or _conclude(act, comparison)
     with store.reading() as reading:
         return concluded.version_of(reading, comparison, version)
 
@@ -49,6 +52,13 @@ def naive_answer(reading: Reading, conclusion: Conclusion, unit: str) -> Answer:
     then = replace(reading, position=conclusion.position, latest=False)
     revision = read_revision(then, conclusion.comparison, revision_id=conclusion.revision_id)
     return answer_as_of(then, replace(revision, model="pooled", unit=unit, looks="single"))
+
+
+def _last_if_up_to_date(act: Act, comparison: int) -> int | None:
+    """The last version, unless the comparison is behind."""
+    reading = Reading(act.connection, act.number - 1)
+    last = concluded.latest(reading, comparison)
+    return None if last is None or comparison in behind(reading) else last.version
 
 
 def _conclude(act: Act, comparison: int) -> int:
@@ -72,9 +82,9 @@ def _conclude(act: Act, comparison: int) -> int:
 
 
 def _numbers(before: Conclusion | None, found: Answer) -> tuple[int, int]:
-    """Version and look: a look is a version computed on other data than the one before."""
+    """Version and look: a look is a version computed on other data than the one before; no data, no look."""
     if before is None:
-        return 1, 1
+        return 1, int(found.runs > 0)
     looked_again = found.inputs != before.answer.inputs
     return before.version + 1, before.look + looked_again
 

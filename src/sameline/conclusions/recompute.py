@@ -7,12 +7,13 @@ The same machine and library versions must give the same answer to the last bit.
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, fields, is_dataclass, replace
 from typing import Any
 
 from sameline.conclusions.conclude import answer_as_of
 from sameline.conclusions.models import engine
+from sameline.ledger.checkpoint import Checkpoint
 from sameline.records import comparisons, concluded, scope
 from sameline.records.answers import Answer
 from sameline.records.checks import Finding, LedgerReport, check_ledger
@@ -30,6 +31,7 @@ CHECKS = (
     "every reference",
     "every conclusion, computed again from the rows as of its look",
     "every comparison: none left behind unseen",
+    "each checkpoint that is given: the ledger still begins with its entries",
 )
 """What verification checks, in the order of the findings' numbers (from 1)."""
 
@@ -53,37 +55,43 @@ class Verification:
     behind: tuple[str, ...]
 
 
-def verify(store: Store, progress: Progress | None = None) -> Verification:
+def verify(store: Store, progress: Progress | None = None, checkpoints: Sequence[Checkpoint] = ()) -> Verification:
     """Check the ledger against the rows, then recompute every conclusion.
 
     Args:
         store: an open store.
         progress: told now and then what is checked, how far it is, and how far it goes.
+        checkpoints: statements of the ledger as it was, kept elsewhere.
     """
     tell = progress or (lambda _what, _done, _all: None)
-    with store.engine.connect() as connection, connection.begin():
-        ledger = check_ledger(connection, lambda done, total: tell("rows", done, total))
-    if any(f.check <= 4 and f.table in _NEEDED for f in ledger.findings):
-        note = Finding(8, None, None, None, None, "not recomputed: the records above are damaged where they are read")
-        return Verification(ledger, 0, (*ledger.findings, note), ())
     with store.reading() as reading:
-        found = list(_conclusions(reading, tell))
-        late = set(scope.behind(reading))
-        names = dict(comparisons.stated_names(reading))
-        found += _left_behind(reading, late)
-        count = len(concluded.all_versions(reading))
-    return Verification(ledger, count, (*ledger.findings, *found), tuple(names[c] for c in sorted(late)))
+        ledger = check_ledger(reading.connection, lambda done, total: tell("rows", done, total), checkpoints)
+    done: list[int] = []
+    late: list[str] = []
+    with store.reading() as reading:
+        recomputed = _as_far_as_possible(8, _conclusions(reading, tell, done))
+        unseen = _as_far_as_possible(9, _left_behind(reading, late))
+    found = sorted((*ledger.findings, *recomputed, *unseen), key=lambda f: f.check)
+    return Verification(ledger, len(done), tuple(found), tuple(late))
 
 
-_NEEDED = frozenset({"entry", "comparison", "comparison_revision", "conclusion", "person"})
+def _as_far_as_possible(check: int, findings: Iterator[Finding]) -> list[Finding]:
+    """All findings; where damaged records stop the check, that is one more."""
+    found: list[Finding] = []
+    try:
+        found.extend(findings)
+    except Exception as error:  # noqa: BLE001 - damaged records can break any step, and that is the finding
+        found.append(Finding(check, None, None, None, None, f"the records cannot be read as far as this: {error}"))
+    return found
 
 
-def _conclusions(reading: Reading, tell: Progress) -> Iterator[Finding]:
-    """8. Every conclusion, in the order in which they were recorded."""
+def _conclusions(reading: Reading, tell: Progress, done: list[int]) -> Iterator[Finding]:
+    """8. Every conclusion, in the order in which they were recorded; `done` gets a number for each."""
     recorded = concluded.all_versions(reading)
-    for done, (comparison, version) in enumerate(recorded, 1):
+    for number, (comparison, version) in enumerate(recorded, 1):
         yield from _conclusion(reading, comparison, version)
-        tell("conclusions", done, len(recorded))
+        done.append(number)
+        tell("conclusions", number, len(recorded))
 
 
 def _conclusion(reading: Reading, comparison: int, version: int) -> Iterator[Finding]:
@@ -132,10 +140,12 @@ def _short(value: Any) -> str:  # noqa: ANN401
     return text if len(text) <= 60 else text[:57] + "..."
 
 
-def _left_behind(reading: Reading, late: set[int]) -> Iterator[Finding]:
-    """9. A comparison that does not say it is behind must rest on the values that its last conclusion read."""
+def _left_behind(reading: Reading, late: list[str]) -> Iterator[Finding]:
+    """9. A comparison must rest on the values that its last conclusion read, or say that it is behind (`late`)."""
+    behind = set(scope.behind(reading))
     for comparison, name in comparisons.stated_names(reading):
-        if comparison in late:
+        if comparison in behind:
+            late.append(name)
             continue
         last = concluded.latest(reading, comparison)
         revision = comparisons.read_revision(reading, comparison)
