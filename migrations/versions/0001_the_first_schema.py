@@ -688,6 +688,7 @@ def upgrade() -> None:
     bind = op.get_bind()
     inspector = sa.inspect(bind)
     for table in sorted(set(inspector.get_table_names()) - {"alembic_version"}):
-        key = tuple(inspector.get_pk_constraint(table)["constrained_columns"])
-        for statement in guard(bind.dialect.name, table, key):
+        others = sorted(unique["column_names"] for unique in inspector.get_unique_constraints(table))
+        keys = [inspector.get_pk_constraint(table)["constrained_columns"], *others]
+        for statement in guard(bind.dialect.name, table, keys):
             op.execute(statement)

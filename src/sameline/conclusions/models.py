@@ -7,6 +7,7 @@ pooled, unequal, ranks: the units (replicates, run means or batch means) as they
 from __future__ import annotations
 
 import platform
+from functools import cache
 from importlib.metadata import version
 from typing import TYPE_CHECKING
 
@@ -25,6 +26,7 @@ if TYPE_CHECKING:
 _ADJUST = {"tukey-kramer": "tukey"}
 
 
+@cache
 def engine() -> str:
     """The versions whose figures these are."""
     return (

@@ -12,6 +12,7 @@ from dataclasses import dataclass, fields, is_dataclass, replace
 from typing import Any
 
 from sameline.conclusions.conclude import answer_as_of
+from sameline.conclusions.inputs import gather
 from sameline.conclusions.models import engine
 from sameline.ledger.checkpoint import Checkpoint
 from sameline.records import comparisons, concluded, scope
@@ -151,5 +152,5 @@ def _left_behind(reading: Reading, late: list[str]) -> Iterator[Finding]:
         revision = comparisons.read_revision(reading, comparison)
         if last is None or last.revision_id != revision.id:
             yield Finding(9, "comparison", comparison, None, None, f"{name} has no conclusion on its last revision")
-        elif last.answer.inputs != answer_as_of(reading, revision).inputs:
+        elif last.answer.inputs != gather(reading, revision).digest():
             yield Finding(9, "comparison", comparison, last.entry, last.person, f"{name} rests on other values by now")

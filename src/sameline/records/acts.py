@@ -15,8 +15,8 @@ from sqlalchemy import Connection, Table, func, insert, select
 
 from sameline import __version__
 from sameline.errors import CallError, StoreError
-from sameline.ledger.canonical import canonical
-from sameline.ledger.merkle import Frontier, leaf_hash, root
+from sameline.ledger.manifest import TableRows, manifest_text
+from sameline.ledger.merkle import Frontier, leaf_hash, leaf_hashes, root
 from sameline.ledger.rows import RowEncoder, row_bytes
 from sameline.records.tables import entry, hashed_columns, tree_node
 
@@ -49,7 +49,12 @@ class Act:
         self.reason = reason
         head = connection.execute(select(func.max(entry.c.number))).scalar() or 0
         self.number: int = head + 1
+        self.abandoned = False
         self._pending: dict[str, _Pending] = {}
+
+    def abandon(self) -> None:
+        """There is nothing to record after all: the act leaves no entry."""
+        self.abandoned = True
 
     def add(self, table: Table, **fields: str | float | bytes | None) -> int:
         """Add one row; fields left out have no value.
@@ -92,8 +97,9 @@ class Act:
         """Write the entry, its rows, and the nodes that they complete in the ledger's tree."""
         digests = {name: _digests(name, pending) for name, pending in self._pending.items()}
         manifest = [
-            {"table": name, "first": pending.first, "count": len(pending.rows), "root": root(digests[name]).hex()}
+            TableRows(name, pending.first, len(pending.rows), root(digests[name]))
             for name, pending in self._pending.items()
+            if pending.rows
         ]
         fields: dict[str, Any] = {
             "number": self.number,
@@ -101,15 +107,15 @@ class Act:
             "person": self.person,
             "act": self.what,
             "reason": self.reason,
-            "rows": canonical(manifest).decode(),
+            "rows": manifest_text(manifest),
             "prior": entry_digest(self.connection, self.number - 1),
             "software": f"sameline {__version__}",
         }
         digest = leaf_hash(row_bytes("entry", fields))
         self.connection.execute(insert(entry), [{**fields, "digest": digest}])
-        for name, pending in self._pending.items():
-            table = entry.metadata.tables[name]
-            insert_rows(self.connection, table, [*pending.columns, "digest"], pending.rows, digests[name])
+        for part in manifest:
+            table, pending = entry.metadata.tables[part.table], self._pending[part.table]
+            insert_rows(self.connection, table, [*pending.columns, "digest"], pending.rows, digests[part.table])
         self._extend_tree(digest)
 
     def _of(self, table: Table) -> _Pending:
@@ -182,5 +188,4 @@ def _refuse_nul(values: Iterable[object]) -> None:
 
 
 def _digests(name: str, pending: _Pending) -> list[bytes]:
-    encode = RowEncoder(name, pending.columns)
-    return [leaf_hash(encode(row)) for row in pending.rows]
+    return leaf_hashes(RowEncoder(name, pending.columns).many(pending.rows))

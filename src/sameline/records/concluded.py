@@ -249,7 +249,7 @@ def codes_of(connection: Connection, kind: str, ids: Iterable[int]) -> dict[int,
     if len(wanted) > 500:
         return codes(connection, KINDS[kind])
     query = select(identity.c.id, identity.c.code).where(identity.c.id.in_(wanted))
-    return dict(connection.execute(query).tuples().all())
+    return {row.id: row.code for row in connection.execute(query)}
 
 
 def _group(row: Any, grouping: str, label: str) -> GroupAnswer:  # noqa: ANN401 - a row of conclusion_group

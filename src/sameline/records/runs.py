@@ -22,6 +22,9 @@ from sameline.records.store import Reading
 _RUN_COLUMNS = ("batch", "characteristic", "tested_at", "analyst", "instrument", "session", "note", "source_file")
 _MEASUREMENT_COLUMNS = ("run", "replicate", "text", "value", "qualifier", "unit")
 
+FEW = 500
+"""So many ids are named in a query; of more, all are read and the wanted ones picked."""
+
 
 @dataclass(frozen=True, slots=True)
 class Measurement:
@@ -122,13 +125,17 @@ def read_measurements(
         runs: only of these runs.
     """
     wanted = None if batches is None else set(batches)
+    of_runs = None if runs is None else set(runs)
     query = _recorded(reading, characteristic)
-    if wanted is not None:
+    if wanted is not None and len(wanted) <= FEW:
         moved_in = select(t.run_amendment.c.run).where(t.run_amendment.c.batch.in_(wanted))
         query = query.where(or_(t.run.c.batch.in_(wanted), t.run.c.id.in_(moved_in)))
-    if runs is not None:
-        query = query.where(t.run.c.id.in_(set(runs)))
+    if of_runs is not None:
+        few = len(of_runs) <= FEW
+        query = query.where(t.run.c.id.in_(of_runs) if few else t.run.c.id.between(min(of_runs), max(of_runs)))
     found = [Measurement(*row) for row in reading.connection.execute(query)]
+    if of_runs is not None:
+        found = [m for m in found if m.run in of_runs]
     if not found:
         return []
     held = _amended(reading, found)

@@ -7,13 +7,15 @@ it was touched after its last conclusion read the records: a question of two ind
 from __future__ import annotations
 
 from collections.abc import Iterable
+from dataclasses import dataclass
 from typing import Any
 
-from sqlalchemy import Connection, Select, and_, func, or_, select
+from sqlalchemy import Connection, Select, func, select
 
 from sameline.records import tables as t
 from sameline.records.acts import Act
 from sameline.records.comparisons import Revision
+from sameline.records.runs import FEW, read_measurements
 from sameline.records.store import Reading
 
 
@@ -31,7 +33,7 @@ def batches_in_scope(reading: Reading, revision: Revision) -> dict[int, int]:
         query = query.where(table.c.material == revision.of_material)
     if revision.of_supplier is not None:
         query = query.where(table.c.supplier == revision.of_supplier)
-    found: dict[int, int] = dict(reading.connection.execute(query).tuples().all())
+    found: dict[int, int] = {row[0]: row[1] for row in reading.connection.execute(query)}
     if revision.groups is None:
         return found
     return {batch: of_group for batch, of_group in found.items() if of_group in revision.groups}
@@ -49,24 +51,22 @@ def touched_by_runs(act: Act, runs: Iterable[tuple[int, int, str]], origin: tupl
     for characteristic, batch, tested_at in runs:
         key = (characteristic, batch)
         latest[key] = max(tested_at, latest.get(key, ""))
+    stated = _stated(act.connection, {characteristic for characteristic, _ in latest})
+    if not stated:
+        return set()
     origins = _origins(act.connection, {batch for _, batch in latest}) if origin is None else {}
-    touched: set[int] = set()
-    for (characteristic, batch), tested_at in latest.items():
-        material, supplier = origin or origins[batch]
-        query = _stated_for(characteristic, batch, material, supplier, tested_at)
-        touched.update(act.connection.execute(query).scalars())
-    return touched
+    return {
+        question.comparison
+        for (characteristic, batch), tested_at in latest.items()
+        for question in stated.get(characteristic, ())
+        if question.takes(batch, *(origin or origins[batch]), tested_at)
+    }
 
 
 def touched_by_batch(act: Act, batch: int, origin: tuple[int, int] | None = None) -> set[int]:
     """The comparisons in whose scope any run of a batch falls, by its origin as recorded, or by this one."""
-    run = t.run
-    tested = act.connection.execute(
-        select(run.c.characteristic, func.max(run.c.tested_at))
-        .where(run.c.batch == batch)
-        .group_by(run.c.characteristic)
-    ).all()
-    return touched_by_runs(act, [(characteristic, batch, at) for characteristic, at in tested], origin)
+    found = read_measurements(Reading(act.connection, act.number - 1), batches=[batch])
+    return touched_by_runs(act, {(m.characteristic, m.batch, m.tested_at) for m in found}, origin)
 
 
 def touched_by_characteristic(act: Act, characteristic: int) -> set[int]:
@@ -124,31 +124,60 @@ def _is_current() -> Any:  # noqa: ANN401 - a SQL condition
     return t.comparison_revision.c.revision == newest
 
 
-def _stated_for(characteristic: int, batch: int, material: int, supplier: int, tested_at: str) -> Select[Any]:
-    revision, group = t.comparison_revision, t.comparison_group
-    listed = (
-        select(group.c.id)
-        .where(
-            group.c.revision == revision.c.id,
-            or_(group.c.batch == batch, group.c.material == material, group.c.supplier == supplier),
+@dataclass(frozen=True, slots=True)
+class _Question:
+    """The current revision of a comparison: what it lets in."""
+
+    comparison: int
+    grouping: str
+    of_material: int | None
+    of_supplier: int | None
+    tested_from: str | None
+    listed: frozenset[int] | None
+
+    def takes(self, batch: int, material: int, supplier: int, tested_at: str) -> bool:
+        """Whether a run of this batch, tested then, is in its scope."""
+        group = {"batch": batch, "material": material, "supplier": supplier}[self.grouping]
+        return (
+            self.of_material in (None, material)
+            and self.of_supplier in (None, supplier)
+            and (self.tested_from is None or self.tested_from <= tested_at)
+            and (self.listed is None or group in self.listed)
         )
-        .exists()
-    )
-    return select(revision.c.comparison).where(
-        revision.c.characteristic == characteristic,
-        or_(revision.c.of_material.is_(None), revision.c.of_material == material),
-        or_(revision.c.of_supplier.is_(None), revision.c.of_supplier == supplier),
-        or_(revision.c.tested_from.is_(None), revision.c.tested_from <= tested_at),
-        or_(revision.c.listed == 0, and_(revision.c.listed == 1, listed)),
-        _is_current(),
-    )
+
+
+def _stated(connection: Connection, characteristics: set[int]) -> dict[int, list[_Question]]:
+    """Characteristic id -> the current revisions of its comparisons."""
+    table = t.comparison_revision
+    found: dict[int, list[_Question]] = {}
+    for characteristic in characteristics:
+        query = select(table).where(table.c.characteristic == characteristic, _is_current())
+        for row in connection.execute(query).mappings():
+            found.setdefault(characteristic, []).append(
+                _Question(
+                    row["comparison"],
+                    row["grouping"],
+                    row["of_material"],
+                    row["of_supplier"],
+                    row["tested_from"],
+                    _listed(connection, row["id"], row["grouping"]) if row["listed"] else None,
+                )
+            )
+    return found
+
+
+def _listed(connection: Connection, revision: int, grouping: str) -> frozenset[int]:
+    group = t.comparison_group
+    return frozenset(connection.execute(select(group.c[grouping]).where(group.c.revision == revision)).scalars())
 
 
 def _origins(connection: Connection, batches: set[int]) -> dict[int, tuple[int, int]]:
     """Batch id -> ids of its material and supplier, as they are now."""
     table = t.batch_particulars
-    newest = select(func.max(table.c.id)).where(table.c.batch.in_(batches)).group_by(table.c.batch).scalar_subquery()
-    query = select(table.c.batch, table.c.material, table.c.supplier).where(table.c.id.in_(newest))
+    newest = select(func.max(table.c.id)).group_by(table.c.batch)
+    if len(batches) <= FEW:
+        newest = newest.where(table.c.batch.in_(batches))
+    query = select(table.c.batch, table.c.material, table.c.supplier).where(table.c.id.in_(newest.scalar_subquery()))
     return {batch: (material, supplier) for batch, material, supplier in connection.execute(query)}
 
 

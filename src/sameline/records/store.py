@@ -152,7 +152,8 @@ class Store:
             if first and act.number != 1:
                 raise StoreError("somebody else made this store just now", advice="use it as it is")
             yield act
-            act.record()
+            if not act.abandoned:
+                act.record()
 
 
 def _has_entries(connection: Connection) -> bool:
