@@ -16,16 +16,19 @@ from typing import TYPE_CHECKING, Any
 
 from sameline.errors import StatsError
 from sameline.stats.nested import cautioning
+from sameline.stats.nested.adjustments import ADJUSTMENTS
 from sameline.stats.nested.components import ComponentTable, component_table
 from sameline.stats.nested.estimate import DF_METHODS, Estimate, estimate_nested
 from sameline.stats.nested.known_spread import KnownSpread, estimate_with
 from sameline.stats.nested.layout import layout_of
 from sameline.stats.nested.levels import Chain, Collapsed, chain_of, session_collapsed
 from sameline.stats.nested.means import NestedMeans, means_of
-from sameline.stats.nested.pairs import Asked, NestedPairs, pairs_of
+from sameline.stats.nested.pairs import Asked, NestedPairs, one_of, pairs_of
 from sameline.stats.nested.pseudo_replication import ReplicatesAsUnits, replicates_as_units
 from sameline.stats.nested.rows import Rows, read_rows
 from sameline.stats.nested.sessions import estimate_crossed
+from sameline.stats.nested.settling import Settling, Wanted, settling_of
+from sameline.stats.plans import Family
 from sameline.stats.verdicts import check_alpha, check_margin
 
 if TYPE_CHECKING:
@@ -112,6 +115,34 @@ class NestedFit:
         """
         asked = Asked(check_alpha(alpha), adjust, control, check_margin(margin), alternative)
         return pairs_of(self, self._estimate, asked)
+
+    def to_settle(
+        self,
+        a: str,
+        b: str,
+        *,
+        margin: float | None = None,
+        alpha: float = 0.05,
+        adjust: str = "tukey",
+        power: float = 0.8,
+    ) -> Settling:
+        """How many more runs (or batches, where they are the topmost level) in each group would settle a pair.
+
+        Args:
+            a: label of one group.
+            b: label of the other.
+            margin: smallest difference that matters; with it equivalence settles the pair too.
+            alpha: error rate of all pairs together.
+            adjust: as for `pairs`; Holm is planned as Bonferroni.
+            power: wanted chance that the pair is settled, were the difference and the spreads as now estimated.
+
+        Raises:
+            StatsError: the pair cannot be judged at all, or an argument cannot be meant.
+        """
+        one_of("adjust", adjust, ADJUSTMENTS)
+        family = Family(len(self.groups), check_alpha(alpha), "bonferroni" if adjust == "holm" else adjust)
+        wanted = Wanted(a, b, check_margin(margin), family, power)
+        return settling_of(self, self._estimate, self._rows, wanted)
 
 
 def fit_nested(

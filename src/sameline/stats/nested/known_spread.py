@@ -56,8 +56,14 @@ class KnownSpread:
         return 2.0 * self.run**2 / self.run_error
 
     @staticmethod
-    def stated(run_sd: float, df: float, source: str) -> KnownSpread:
+    def stated(run_sd: float, df: float, source: str, *, includes_replicate: bool = False) -> KnownSpread:
         """From a figure: a standard deviation from run to run with its degrees of freedom.
+
+        Args:
+            run_sd: in the values' unit.
+            df: its degrees of freedom.
+            source: a few words for the conclusion.
+            includes_replicate: it is that of single values from different runs (intermediate precision).
 
         Raises:
             StatsError: the deviation or the degrees of freedom are not above zero.
@@ -69,7 +75,7 @@ class KnownSpread:
                 advice="give a standard deviation above 0, in the values' unit, and how many degrees of freedom it has",
             )
         variance = float(run_sd) ** 2
-        return KnownSpread(variance, 2.0 * variance**2 / df, source=source)
+        return KnownSpread(variance, 2.0 * variance**2 / df, includes_replicate=includes_replicate, source=source)
 
 
 def known_spread(values: Iterable[Any], batches: Iterable[Any], runs: Iterable[Any], source: str = "") -> KnownSpread:

@@ -139,13 +139,13 @@ def pairs_of(fit: NestedFit, estimate: Estimate, asked: Asked) -> NestedPairs:
 
 
 def _check_options(groups: tuple[str, ...], asked: Asked) -> None:
-    _one_of("adjust", asked.adjust, ADJUSTMENTS)
-    _one_of("alternative", asked.alternative, ALTERNATIVES)
+    one_of("adjust", asked.adjust, ADJUSTMENTS)
+    one_of("alternative", asked.alternative, ALTERNATIVES)
     k, control = len(groups), asked.control
     if k < 2:
         raise StatsError("there is one group: no pair to judge", where="groups", advice="give values of more groups")
     if control is not None:
-        _one_of("control", control, groups)
+        one_of("control", control, groups)
     if asked.adjust == "dunnett" and control is None:
         raise StatsError("Dunnett's procedure needs a control", where="control", advice="name the control")
     if asked.adjust == "tukey" and control is not None:
@@ -166,7 +166,8 @@ def _check_options(groups: tuple[str, ...], asked: Asked) -> None:
         )
 
 
-def _one_of(option: str, given: str, known: tuple[str, ...]) -> None:
+def one_of(option: str, given: str, known: tuple[str, ...]) -> None:
+    """Refuses an option that is not among the known ones."""
     if given not in known:
         some = ", ".join(known[:10]) + (" …" if len(known) > 10 else "")
         raise StatsError(f"{option} {given!r} is not known", where=option, advice=f"one of {some}")
