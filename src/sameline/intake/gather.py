@@ -27,7 +27,7 @@ class Group:
     """The rows of one run while they are gathered."""
 
     __slots__ = (
-        "absent", "breaks", "cells", "column", "faults", "faulty", "first", "footer", "identity", "measurements",
+        "breaks", "cells", "column", "faults", "faulty", "first", "footer", "highest", "identity", "measurements",
         "next", "numbers", "ordered", "tables",
     )  # fmt: skip
 
@@ -39,8 +39,8 @@ class Group:
         self.tables: list[Table] = [] if column is None else cells.tables(column)
         self.measurements: list[DraftMeasurement] = []
         self.breaks: list[tuple[int, int]] | None = None  # rows in between that are not its own
-        self.numbers: set[int] | None = None  # replicate numbers seen, once they are not simply 1, 2, 3, …
-        self.absent: frozenset[int] = frozenset()  # replicate numbers whose cells hold no figure
+        self.numbers: set[int] | None = None  # replicate numbers seen (also without a figure), once not 1, 2, 3, …
+        self.highest = 0  # the highest of them
         self.ordered = True
         self.faulty = identity is None
         self.faults: tuple[Fault, ...] = ()
@@ -163,8 +163,8 @@ class Gatherer:
     def _no_figure(
         self, group: Group, row: int, number: int, text: str, column: ValueColumn, reading: NoFigure
     ) -> None:
-        self._irregular(group)
-        group.absent |= {number}
+        self._irregular(group).add(number)
+        group.highest = max(group.highest, number)
         group.faulty = group.faulty or not reading.stated
         self._book.add(row, column.heading, text, reading.problem, reading.suggestion, question=reading.stated)
 
@@ -172,6 +172,7 @@ class Gatherer:
         """From here on the run's replicate numbers are kept one by one, and the fast path is left."""
         if group.numbers is None:
             group.numbers = {measurement.replicate for measurement in group.measurements}
+            group.highest = len(group.measurements)
             group.column = None
         return group.numbers
 
@@ -184,20 +185,21 @@ class Gatherer:
         numbers = self._irregular(group)
         number = int(stated) if stated.isascii() and stated.isdigit() and len(stated) < 6 else 0
         if not stated:
-            number = max(numbers | group.absent, default=0) + 1
+            number = group.highest + 1
         heading = self._layout.heading("replicate")
         if not 1 <= number <= _MOST_REPLICATES:
             group.faulty = True
             advice = "number the replicates 1, 2, 3, … within each run, or leave the column out"
             self._book.add(row, heading, replicate, f"{stated!r} is no replicate number", advice)
             return 0
-        if number in numbers or number in group.absent:
+        if number in numbers:
             group.faulty = True
             advice = "is the row there twice, or is it another run?"
             problem = f"replicate {number} of this run (from row {group.first}) is there already"
             self._book.add(row, heading, replicate, problem, advice)
             return 0
-        group.ordered = group.ordered and number > max(numbers, default=0)
+        group.ordered = group.ordered and number > group.highest
+        group.highest = max(group.highest, number)
         numbers.add(number)
         return number
 

@@ -9,6 +9,8 @@ from sameline.intake.gather import Group, Identity, Place
 from sameline.intake.headings import Layout
 from sameline.records.drafts import DraftMeasurement, DraftRun, Register
 
+_LOOKED_AT = 1_000  # replicate numbers among which gaps are looked for
+
 
 class RunMaker:
     """Makes the runs of one table.
@@ -85,8 +87,8 @@ class RunMaker:
 
     def _gaps(self, group: Group) -> None:
         """Replicate numbers that are left out are asked about; those whose cell says "n/a" have been already."""
-        present = {measurement.replicate for measurement in group.measurements} | group.absent
-        gaps = sorted(set(range(1, max(present, default=0))) - present) if max(present, default=0) < 1_000 else []
+        present = group.numbers or set()
+        gaps = [number for number in range(1, min(group.highest, _LOOKED_AT)) if number not in present]
         if gaps:
             listed = ", ".join(str(number) for number in gaps[:10]) + (", …" if len(gaps) > 10 else "")
             problem = f"replicate {listed} of this run is not there"

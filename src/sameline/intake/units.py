@@ -47,6 +47,7 @@ _SPELLINGS = {
     "Nmm": "N*mm",
     "lbf-in": "lbf*inch",
     "lbf-ft": "lbf*ft",
+    "mil": "thou",  # an angle to the library
     "kp": "kgf",
     "kp/cm^2": "kgf/cm^2",
     "kp/mm^2": "kgf/mm^2",
@@ -63,87 +64,19 @@ _SPELLINGS = {
 
 # What the trade measures in, by the library's names. The library knows many more ("pcs" is a parsec to it).
 _KNOWN = frozenset(
-    [
-        "meter",
-        "gram",
-        "second",
-        "ampere",
-        "kelvin",
-        "mole",
-        "candela",
-        "minute",
-        "hour",
-        "day",
-        "inch",
-        "foot",
-        "yard",
-        "thou",
-        "mil",
-        "liter",
-        "gallon",
-        "pound",
-        "ounce",
-        "grain",
-        "metric_ton",
-        "ton",
-        "newton",
-        "dyne",
-        "force_kilogram",
-        "force_gram",
-        "force_pound",
-        "force_ounce",
-        "kip",
-        "kip_per_square_inch",
-        "pound_force_per_square_inch",
-        "pascal",
-        "bar",
-        "atmosphere",
-        "standard_atmosphere",
-        "technical_atmosphere",
-        "torr",
-        "millimeter_Hg",
-        "joule",
-        "watt",
-        "watt_hour",
-        "calorie",
-        "british_thermal_unit",
-        "horsepower",
-        "volt",
-        "ohm",
-        "siemens",
-        "farad",
-        "coulomb",
-        "henry",
-        "tesla",
-        "weber",
-        "lux",
-        "lumen",
-        "hertz",
-        "revolutions_per_minute",
-        "revolution",
-        "radian",
-        "degree",
-        "percent",
-        "permille",
-        "ppm",
-        "ppb",
-        "poise",
-        "stokes",
-        "centipoise",
-        "degree_Celsius",
-        "degree_Fahrenheit",
-        "degree_Rankine",
-        "delta_degree_Celsius",
-        "delta_degree_Fahrenheit",
-        "tex",
-        "dtex",
-        "denier",
-        "angstrom",
-        "micron",
-        "barye",
-        "becquerel",
-        "gray",
-    ]
+    re.findall(
+        r"\w+",
+        """
+        meter gram second ampere kelvin mole candela minute hour day inch foot yard thou liter gallon
+        pound ounce grain metric_ton newton dyne force_kilogram force_gram force_pound force_ounce kip
+        kip_per_square_inch pound_force_per_square_inch pascal bar atmosphere standard_atmosphere
+        technical_atmosphere torr meter_Hg joule watt watt_hour calorie british_thermal_unit horsepower
+        volt ohm siemens farad coulomb henry tesla weber lux lumen hertz revolutions_per_minute revolution
+        radian degree percent permille ppm ppb poise stokes degree_Celsius degree_Fahrenheit
+        degree_Rankine delta_degree_Celsius delta_degree_Fahrenheit tex dtex denier angstrom micron barye
+        becquerel gray
+        """,
+    )
 )
 _ENERGY = frozenset({"joule", "watt", "watt_hour", "calorie", "british_thermal_unit", "horsepower", "erg"})
 _ANGLE = frozenset({"radian", "degree", "revolution", "revolutions_per_minute"})
