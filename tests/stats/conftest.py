@@ -7,7 +7,11 @@ from typing import Any
 
 import numpy as np
 import pytest
+from hypothesis import settings
 from numpy.typing import ArrayLike
+
+settings.register_profile("fixed", deadline=None, derandomize=True)
+settings.load_profile("fixed")
 
 Case = dict[str, Any]
 CASES = Path(__file__).parents[1] / "reference" / "cases"

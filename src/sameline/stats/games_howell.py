@@ -3,8 +3,9 @@
 For each pair q = |mean_b - mean_a| / sqrt((v_a/n_a + v_b/n_b) / 2) against the studentized range of k means with
 Welch-Satterthwaite degrees of freedom of that pair; intervals difference ± q_crit sqrt((v_a/n_a + v_b/n_b) / 2).
 
-Assumes independent values and normal scatter, not one variance. It holds its error rate approximately: with two or
-three values a group it claims falsely in 6 to 10 % of families at a nominal 5 %; a caution says so below six values.
+Assumes independent values and normal scatter, not one variance. It holds its error rate approximately: with few values
+in many groups it claims falsely more often than stated (ten groups of three: 10 % at a nominal 5 %); a caution says so
+below six values a group, with the figure.
 A pair is not estimable where a group has one value or neither group has a spread (see `welch_pairs`); the others are.
 
 Reference: Games, P. A. & Howell, J. F. (1976), Pairwise multiple comparison procedures with unequal N's and/or

@@ -13,7 +13,9 @@ import numpy as np
 from sameline.stats import analysis_of_variance as one_way
 from sameline.stats.cautions import Caution
 from sameline.stats.columns import Bools, Columns, Question
+from sameline.stats.diagnostics import Diagnostics, diagnose
 from sameline.stats.lines import Display, control_display, lines
+from sameline.stats.pair_cautions import pair_cautions
 from sameline.stats.procedures import COMMON, Procedure
 from sameline.stats.summaries import GroupSummary, summaries
 from sameline.stats.values import Floats
@@ -166,7 +168,12 @@ class PairsResult:
     @cached_property
     def cautions(self) -> tuple[Caution, ...]:
         """What a reader must know before leaning on the result."""
-        return self.question.samples.cautions
+        return pair_cautions(self)
+
+    @cached_property
+    def diagnostics(self) -> Diagnostics:
+        """Tests of equal spread and of shape on the same samples."""
+        return diagnose(self.question.samples)
 
     def frame(self) -> pd.DataFrame:
         """One row a pair: the fields of `Pair`. Columns with a figure missing hold None there, never NaN."""

@@ -55,6 +55,8 @@ def read_values(values: Iterable[Any]) -> Values:
     if isinstance(values, np.ma.MaskedArray):
         _refuse(np.flatnonzero(np.ma.getmaskarray(values)), values.size, "missing")
     given = values if hasattr(values, "__array__") else list(values)
+    if isinstance(given, list) and not {bool, np.bool_}.isdisjoint(map(type, given)):
+        raise StatsError("a truth value is not a measurement", where="values", advice="give numbers")
     try:
         array = np.asarray(given)
     except ValueError:
