@@ -58,7 +58,8 @@ def dunnett_sf(t: ArrayLike, lambdas: ArrayLike, df: float, alternative: Alterna
     weights, two_sided = _weights(lambdas), _is_two_sided(alternative)
     oriented = np.abs(statistic) if two_sided else -statistic if alternative == "less" else statistic
     log_sf = _log_sf(np.clip(oriented.ravel(), -1e150, 1e150), weights, two_sided, _freedom(df))
-    sf = np.exp(np.where(np.isposinf(oriented.ravel()), -np.inf, log_sf))
+    flat = oriented.ravel()
+    sf = np.exp(np.where(np.isinf(flat), np.where(flat > 0, -np.inf, 0.0), log_sf))
     return sf.reshape(statistic.shape) if statistic.shape else float(sf[0])
 
 

@@ -24,7 +24,7 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
 
 _MOST_GROUPS = 10_000
-_LARGEST_Q = 1e150
+_SMALLEST_Q, _LARGEST_Q = 1e-300, 1e150
 _LOG_HALF = float(np.log(0.5))
 
 
@@ -113,7 +113,7 @@ def _log_sf(q: Array, groups: int, df: Array) -> Array:
     """Return log P(Q > q), 0 for q <= 0."""
     out = np.zeros_like(q)
     inside = np.flatnonzero(q > 0.0)
-    positive = np.minimum(q[inside], _LARGEST_Q)
+    positive = np.clip(q[inside], _SMALLEST_Q, _LARGEST_Q)
     if df.size == 1:
         out[inside] = log_sf_over_q(positive, groups, float(df[0]))
     else:
@@ -128,7 +128,9 @@ def _cdf(q: Array, groups: int, df: Array) -> Array:
     out = -np.expm1(log_sf)
     low = np.flatnonzero((q > 0.0) & (log_sf > _LOG_HALF))
     if low.size:
-        out[low] = np.exp(log_cdf_and_slope(q[low], groups, np.broadcast_to(df, q.shape)[low])[0])
+        out[low] = np.exp(
+            log_cdf_and_slope(np.maximum(q[low], _SMALLEST_Q), groups, np.broadcast_to(df, q.shape)[low])[0]
+        )
     return out
 
 
