@@ -10,17 +10,22 @@ import sys
 
 import typer
 
-from sameline.cli import ask, audit, bench, correct, files, register, setup, tour
+from sameline.cli import ask, audit, bench, correct, files, recorded, register, setup, tour
 from sameline.errors import FindingsError, SamelineError
 
 app = typer.Typer(
     name="sameline",
     help="Records of a quality-control laboratory, and the defended answer to: which lots really differ?",
     no_args_is_help=True,
+    add_completion=False,
+    rich_markup_mode=None,
     pretty_exceptions_enable=False,
     context_settings={"help_option_names": ["-h", "--help"]},
 )
-for group in (setup, register, bench, files, correct, ask, audit, tour):
+STOPPED = 130
+"""The exit code where a person stopped the command."""
+
+for group in (setup, register, bench, files, recorded, correct, ask, audit, tour):
     group.add_to(app)
 
 
@@ -32,25 +37,27 @@ def main() -> None:
 def run(arguments: list[str]) -> int:
     """Run one command; returns the exit code."""
     try:
-        return app(arguments, standalone_mode=False) or 0
+        code = int(app(arguments, standalone_mode=False) or 0)
     except SamelineError as error:
         say_error(error)
-        return error.exit_code
-    except typer.Exit as stop:
-        return stop.exit_code
+        code = error.exit_code
     except typer.TyperException as error:
-        if not (message := error.format_message().rstrip(".")):
-            return 2  # a group called without a command has shown its help
-        typer.echo(f"sameline: {message}", err=True)
-        command = getattr(getattr(error, "ctx", None), "command_path", "sameline")
-        typer.echo(f"  `{command} --help` tells how it is called", err=True)
-        return 2
-    except (KeyboardInterrupt, typer.Abort):
+        say_call(error)
+        code = 2
+    except typer.Abort:
+        code = STOPPED
+    except SystemExit:  # typer's answer to a reader of the output that went away, such as `| head`
+        code = 0
+    if code == STOPPED:  # typer's answer to the keyboard
         typer.echo("stopped; what was not confirmed is not recorded", err=True)
-        return 130
-    except BrokenPipeError:
-        sys.stderr.close()
-        return 0
+    return code
+
+
+def say_call(error: typer.TyperException) -> None:
+    """Write what is wrong with a call, and where its form is told."""
+    typer.echo(f"sameline: {error.format_message().rstrip('.')}", err=True)
+    command = getattr(getattr(error, "ctx", None), "command_path", "sameline")
+    typer.echo(f"  `{command} --help` tells how it is called", err=True)
 
 
 def say_error(error: SamelineError) -> None:

@@ -65,7 +65,10 @@ def compare(
     store: StoreOption = DEFAULT_STORE,
     by: ByOption = None,
 ) -> None:
-    """State a comparison before its data; stated again, it is a new revision and the old one stays."""
+    """State a comparison, best before its data.
+
+    Stated again under its name, it is a new revision; the old one stays readable.
+    """
     from sameline.conclusions.statements import settled
     from sameline.records.comparisons import Statement
 
@@ -105,7 +108,10 @@ def differ(
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
 ) -> None:
-    """Which differ? The groups in order of mean, the lines under them, and the pairs that are shown to differ."""
+    """Say which groups differ, and how sure that is.
+
+    The groups in order of mean, the lines beside them, and the pairs that are shown to differ.
+    """
     with open_store(store) as lab:
         if name is None:
             _overview(lab, as_of, as_json=as_json)
@@ -163,7 +169,10 @@ def history(
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
 ) -> None:
-    """List the versions of a conclusion: when, by whose act, at which look, which verdicts turned and why."""
+    """Say how a conclusion came about, version by version.
+
+    When, by whose act, at which look, which verdicts turned, and why.
+    """
     with open_store(store) as lab:
         versions = lab.history(name, as_of)
     if as_json:

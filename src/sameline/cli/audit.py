@@ -59,7 +59,10 @@ def trail(
 
 
 def verify(as_json: JsonOption = False, store: StoreOption = DEFAULT_STORE) -> None:
-    """Check every row against the ledger, and compute every conclusion again; exit code 1 with every finding."""
+    """Check all records, and compute every conclusion again.
+
+    Every finding is named, and then the exit code is 1.
+    """
     with open_store(store) as lab:
         report = lab.verify(_progress())
     if as_json:
@@ -89,7 +92,10 @@ def _progress() -> Callable[[str, int, int], None] | None:
 
 
 def catch_up(as_json: JsonOption = False, store: StoreOption = DEFAULT_STORE, by: ByOption = None) -> None:
-    """Bring comparisons up to date that were left behind, for example by a power cut."""
+    """Bring comparisons up to date that were left behind.
+
+    A power cut between an act and its answer can leave them behind; the next act does the same.
+    """
     with open_store(store, by) as lab:
         outcome = lab.catch_up()
     if not outcome.conclusions and not outcome.behind:

@@ -9,9 +9,11 @@ import typer
 
 from sameline.cli.common import (
     DEFAULT_STORE,
+    NEGATIVE_VALUES,
     ByOption,
     JsonOption,
     StoreOption,
+    check_no_option,
     open_store,
     say,
     say_changes,
@@ -26,7 +28,7 @@ if TYPE_CHECKING:
 
 def add_to(app: typer.Typer) -> None:
     """Add this file's commands."""
-    app.command()(log)
+    app.command(context_settings=NEGATIVE_VALUES)(log)
 
 
 def log(
@@ -44,7 +46,11 @@ def log(
     store: StoreOption = DEFAULT_STORE,
     by: ByOption = None,
 ) -> None:
-    """Record one run: one batch, one characteristic, one occasion, all its replicates."""
+    """Record one run with its replicates.
+
+    A run is one batch, one characteristic and one occasion: one analyst, one instrument, one time.
+    """
+    check_no_option(values or ())
     batch = batch or _ask("batch")
     characteristic = characteristic or _ask("characteristic")
     values = values or _ask("values, with blanks between them").split()

@@ -7,6 +7,8 @@ from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
+from sameline.errors import CallError
+
 if TYPE_CHECKING:
     from collections.abc import Iterable
 
@@ -27,6 +29,8 @@ ReasonOption = Annotated[str, typer.Option("--reason", help="Why; it stands in t
 MaybeReasonOption = Annotated[str | None, typer.Option("--reason", help="Why, if there is something to say.")]
 
 DEFAULT_STORE = "lab.db"
+NEGATIVE_VALUES = {"ignore_unknown_options": True}
+"""Settings of commands whose arguments are values: -42 is a value there, not an option."""
 
 
 def open_store(store: str, by: str | None = None) -> Lab:
@@ -34,6 +38,17 @@ def open_store(store: str, by: str | None = None) -> Lab:
     from sameline.lab import open_lab
 
     return open_lab(store, by=by)
+
+
+def check_no_option(values: Iterable[str]) -> None:
+    """Refuse a misspelt option among values, where negative values are let through.
+
+    Raises:
+        CallError: one of them is no value but looks like an option.
+    """
+    for value in values:
+        if value.startswith("--") or (value.startswith("-") and value[1:2].isalpha()):
+            raise CallError(f"there is no option {value}", advice="the command with --help lists its options")
 
 
 def write(lines: Iterable[str]) -> None:

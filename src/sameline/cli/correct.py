@@ -8,15 +8,22 @@ import typer
 
 from sameline.cli.common import (
     DEFAULT_STORE,
+    NEGATIVE_VALUES,
     ByOption,
     JsonOption,
     ReasonOption,
     StoreOption,
+    check_no_option,
     open_store,
     say,
     say_changes,
 )
 from sameline.errors import CallError
+
+CAUSE_WORDS = (
+    "instrument fault, specimen damaged, wrong specimen, method not followed, conditions out of range, "
+    "transcription error, or other stated cause"
+)
 
 Run = Annotated[int | None, typer.Option("--run", help="Number of the run.")]
 Replicate = Annotated[int | None, typer.Option("--replicate", help="Number of the replicate within the run.")]
@@ -25,7 +32,7 @@ Batch = Annotated[str | None, typer.Option("--batch", help="Code of the batch.")
 
 def add_to(app: typer.Typer) -> None:
     """Add this file's commands."""
-    app.command()(amend)
+    app.command(context_settings=NEGATIVE_VALUES)(amend)
     app.command()(exclude)
     app.command()(restore)
 
@@ -40,6 +47,7 @@ def amend(
     by: ByOption = None,
 ) -> None:
     """Correct a recorded value."""
+    check_no_option([value])
     with open_store(store, by) as lab:
         measurement, draft = lab.corrected(run, replicate, value)
         outcome = lab.amend(measurement, draft, reason=reason)
@@ -48,7 +56,7 @@ def amend(
 
 
 def exclude(
-    cause: Annotated[str, typer.Option(help="The assignable cause; `sameline exclude --cause list` shows them.")],
+    cause: Annotated[str, typer.Option(help=f"The assignable cause: {CAUSE_WORDS}.")],
     reason: ReasonOption,
     run: Run = None,
     replicate: Replicate = None,
@@ -57,7 +65,7 @@ def exclude(
     store: StoreOption = DEFAULT_STORE,
     by: ByOption = None,
 ) -> None:
-    """Set a replicate, a run or a batch aside, with an assignable cause."""
+    """Set a replicate, run or batch aside, with its cause."""
     with open_store(store, by) as lab:
         words, what = lab.named(run=run, replicate=replicate, batch=batch)
         outcome = lab.exclude(cause, reason=reason, **what)

@@ -22,12 +22,8 @@ from sameline.cli.common import (
 )
 from sameline.errors import CallError
 
-add_app = typer.Typer(
-    help="Register a supplier, material, batch, characteristic, instrument or person.", no_args_is_help=True
-)
-restate_app = typer.Typer(
-    help="State a batch's or characteristic's particulars anew; the old ones stay readable.", no_args_is_help=True
-)
+add_app = typer.Typer(help="Register what is tested, with what, and by whom.", no_args_is_help=True)
+restate_app = typer.Typer(help="State registered particulars anew; the old ones stay.", no_args_is_help=True)
 
 KINDS = ("supplier", "material", "batch", "characteristic", "instrument", "person")
 

@@ -33,7 +33,10 @@ def tour(
     folder: Annotated[Path, typer.Argument(help="A folder for the demo's store and files; it is made.")] = Path("tour"),
     pause: Annotated[bool, typer.Option("--pause", help="Wait for the Enter key after each step.")] = False,
 ) -> None:
-    """Play the demo scenario in a new store: a year of a gasket maker's incoming tests, all invented."""
+    """Play the demo scenario in a new store.
+
+    It is a year of a gasket maker's incoming tests. The firm, its people and all figures are invented.
+    """
     from sameline.resources import seed_folder
 
     scenario = json.loads((seed_folder() / "scenario.json").read_text(encoding="utf-8"))
@@ -55,7 +58,7 @@ def _make_folder(folder: Path) -> None:
         folder.mkdir(parents=True, exist_ok=True)
         if any(folder.iterdir()):
             raise CallError("the folder is not empty", where=str(folder), advice="name a new one")
-    except (FileExistsError, NotADirectoryError, PermissionError) as error:
+    except OSError as error:
         raise CallError("the folder cannot be made", where=str(folder), advice="name another one") from error
 
 

@@ -109,7 +109,8 @@ def _overview_row(name: str, conclusion: Conclusion | None, behind: bool) -> tup
 
 def _head(conclusion: Conclusion, subject: Subject) -> list[str]:
     revision = subject.revision
-    about = f"{subject.name} ({subject.characteristic}), {subject.unit}"
+    named = subject.characteristic if subject.name == subject.characteristic else None
+    about = f"{named or f'{subject.name} ({subject.characteristic})'}, {subject.unit}"
     how = f"{PROCEDURE_WORDS[revision.procedure]} {MODEL_WORDS[revision.model]}"
     units = _NESTING[revision.grouping] if revision.model == "nested" else f"of {_UNITS[revision.unit]}"
     margin = f"margin {plain(subject.margin)} {subject.unit}" if subject.margin is not None else "no margin stated"
@@ -187,7 +188,9 @@ def _pairs(conclusion: Conclusion, subject: Subject, *, all_pairs: bool) -> list
     shown = [p for p in pairs if all_pairs or p.differs]
     rest = len(pairs) - len(shown)
     if not shown:
-        words = f"  None of the {count(len(pairs), 'pair')} is shown to differ ({tally(conclusion)})."
+        if len(pairs) == 1:
+            return [f"  The one pair is not shown to differ: {pairs[0].verdict}.", "  --all shows its interval."]
+        words = f"  None of the {len(pairs)} pairs is shown to differ ({tally(conclusion)})."
         return [words, "  --all lists them with their intervals."]
     decimals = subject.decimals + 1
     rows = [_pair_row(p, decimals) for p in shown]
@@ -195,7 +198,7 @@ def _pairs(conclusion: Conclusion, subject: Subject, *, all_pairs: bool) -> list
     headings = ("pair", "difference", f"{confidence} simultaneous interval", "p-value", "verdict")
     lines = table(headings, rows, "<><><")
     if rest:
-        lines.append(f"  {count(rest, 'other pair')} not shown to differ ({tally(conclusion)}); --all lists them.")
+        lines.append(f"  {tally(conclusion)}; --all lists the other pairs too.")
     return lines
 
 
