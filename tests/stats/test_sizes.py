@@ -54,7 +54,7 @@ def test_noncentrality_undoes_exceedance(critical: float, df: float, power: floa
 
 def test_two_groups_are_the_t_test_and_dunnett_with_one_treatment():
     pairs, control = size_for(Design(2), 1.0, 1.0, 0.9), size_for(Design(2, "dunnett"), 1.0, 1.0, 0.9)
-    # J. Cohen, Statistical Power Analysis, 2nd ed. 1988, table 2.4.1 (from memory) has 22 for d = 1, two-sided 5 %, power
+    # J. Cohen, Statistical Power Analysis, 2nd ed. 1988, table 2.4.1 (from memory): 22 for d = 1, two-sided 5 %, power
     # 0.90, by his approximation; the exact noncentral t gives 23 at power 0.9125
     assert pairs.n == control.n == 23
     assert pairs.power == pytest.approx(control.power, rel=1e-10)
