@@ -433,6 +433,8 @@ def upgrade() -> None:
         sa.Column("df_within", sa.Float(precision=53), nullable=True),
         sa.Column("p_value", sa.Float(precision=53), nullable=True),
         sa.Column("critical_value", sa.Float(precision=53), nullable=True),
+        sa.Column("guarantee", sa.Text(), nullable=True),
+        sa.Column("looks_state", sa.Text(), nullable=True),
         sa.Column("engine", sa.Text(), nullable=False),
         sa.Column("digest", sa.LargeBinary(), nullable=False),
         sa.CheckConstraint("state IN ('answered', 'not computed')", name=op.f("ck_conclusion_state")),
@@ -641,6 +643,9 @@ def upgrade() -> None:
         sa.Column("verdict", sa.Text(), nullable=False),
         sa.Column("reason", sa.Text(), nullable=True),
         sa.Column("single_look_p", sa.Float(precision=53), nullable=True),
+        sa.Column("p_now", sa.Float(precision=53), nullable=True),
+        sa.Column("log_evidence", sa.Float(precision=53), nullable=True),
+        sa.Column("share", sa.Float(precision=53), nullable=True),
         sa.Column("digest", sa.LargeBinary(), nullable=False),
         sa.CheckConstraint(
             "verdict IN ('differs and matters', 'differs', 'equivalent', 'undecided')",

@@ -60,6 +60,15 @@ def compare(
     margin: Annotated[
         float | None, typer.Option(help="Smallest difference that matters; the characteristic's if left out.")
     ] = None,
+    looks: Annotated[
+        str,
+        typer.Option(help="open (any number of looks, no end), planned (up to a stated amount of data), or single."),
+    ] = "open",
+    units: Annotated[
+        int | None,
+        typer.Option(help="With planned or single looks: the final number of units, of all groups together."),
+    ] = None,
+    spending: Annotated[str | None, typer.Option(help="With planned looks: obrien-fleming or pocock.")] = None,
     reason: MaybeReasonOption = None,
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
@@ -87,6 +96,9 @@ def compare(
                 control=control,
                 alternative=alternative,
                 margin=margin,
+                looks=looks,
+                final_units=units,
+                spending=spending,
             ),
             model=model,
             procedure=procedure,
@@ -102,7 +114,9 @@ def differ(
     all_pairs: Annotated[bool, typer.Option("--all", help="List the pairs that are not shown to differ too.")] = False,
     contrast: Annotated[
         str | None,
-        typer.Option(help="Show beside it what a single look on replicates, or on runs, as independent would say."),
+        typer.Option(
+            help="Show beside it what this look alone would say (look), or one on replicates or runs as units."
+        ),
     ] = None,
     as_of: AsOfOption = None,
     as_json: JsonOption = False,
@@ -136,7 +150,8 @@ def _one(
 ) -> None:
     conclusion = lab.conclusion(name, version, as_of)
     subject, behind = lab.subject(conclusion), lab.is_behind(conclusion) and version is None and as_of is None
-    naive = None if contrast is None else lab.contrast(conclusion, _contrast_unit(contrast))
+    unit = None if contrast in (None, "look") else _contrast_unit(contrast or "")
+    naive = None if unit is None else lab.contrast(conclusion, unit)
     if as_json:
         from dataclasses import asdict
 
@@ -147,11 +162,13 @@ def _one(
             document["contrast"] = {"units": contrast, "pairs": [asdict(pair) for pair in naive.pairs]}
         write_json(document)
         return
-    from sameline.reports.differ import contrast_text, differ_text
+    from sameline.reports.differ import contrast_text, differ_text, single_look_text
 
     write(differ_text(conclusion, subject, behind=behind, all_pairs=all_pairs))
-    if naive is not None:
-        write(contrast_text(conclusion, naive, subject, _contrast_unit(contrast or "")))
+    if contrast == "look":
+        write(single_look_text(conclusion, subject))
+    if naive is not None and unit is not None:
+        write(contrast_text(conclusion, naive, subject, unit))
 
 
 def _contrast_unit(word: str) -> str:
@@ -159,7 +176,7 @@ def _contrast_unit(word: str) -> str:
         word
     )
     if unit is None:
-        raise CallError(f"there is no contrast {word!r}", advice="one of replicates, runs")
+        raise CallError(f"there is no contrast {word!r}", advice="one of look, replicates, runs")
     return unit
 
 

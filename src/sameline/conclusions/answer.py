@@ -11,28 +11,29 @@ from sameline.records.answers import ANSWERED, NOT_COMPUTED, Answer, CautionAnsw
 if TYPE_CHECKING:
     from sameline.conclusions.inputs import Inputs, Value
     from sameline.conclusions.judged import Judged
+    from sameline.conclusions.past import Past
     from sameline.records.comparisons import Revision
 
 
-def answer(revision: Revision, inputs: Inputs) -> Answer:
-    """What the revision's procedure says of these inputs.
+def answer(revision: Revision, inputs: Inputs, past: Past) -> Answer:
+    """What the revision's procedure says of these inputs, after what came before.
 
     Never raises for what the data are: a comparison that cannot be answered is answered so, with the reason.
     """
-    found = _judge(revision, inputs)
-    cautions = (*_stated_late(inputs, revision), *found.cautions, *_set_aside(revision, inputs, found))
+    found = _judge(revision, inputs, past)
+    cautions = (*_stated_late(revision, inputs, past), *found.cautions, *_set_aside(revision, inputs, past, found))
     return replace(found, cautions=cautions)
 
 
-def _judge(revision: Revision, inputs: Inputs) -> Answer:
-    nothing = _nothing(inputs)
+def _judge(revision: Revision, inputs: Inputs, past: Past) -> Answer:
+    nothing = replace(_nothing(inputs), looks_state=past.state)
     reason = _refusal(revision, inputs)
     if reason is not None:
         return replace(nothing, reason=reason)
     from sameline.conclusions.models import judge  # the statistics are loaded only when there is something to compute
 
     try:
-        judged = judge(revision, inputs)
+        judged = judge(revision, inputs, past)
     except StatsError as error:
         return replace(nothing, reason=str(error))
     return _answered(nothing, judged)
@@ -52,6 +53,8 @@ def _answered(nothing: Answer, judged: Judged) -> Answer:
         test=judged.test,
         critical_value=judged.critical_value,
         engine=judged.engine,
+        guarantee=judged.guarantee,
+        looks_state=judged.looks_state,
     )
 
 
@@ -124,13 +127,13 @@ class _Turned:
     with_them: str
 
 
-def _set_aside(revision: Revision, inputs: Inputs, found: Answer) -> tuple[CautionAnswer, ...]:
+def _set_aside(revision: Revision, inputs: Inputs, past: Past, found: Answer) -> tuple[CautionAnswer, ...]:
     """What is set aside, and whether any verdict would turn with it put back."""
     aside = [v for v in inputs.values if v.excluded is not None]
     if not aside:
         return ()
     back = replace(inputs, values=tuple(replace(v, excluded=None) for v in inputs.values))
-    other = _judge(revision, back)
+    other = _judge(revision, back, replace(past, amended=()))
     then = {(p.a, p.b): p.verdict for p in other.pairs}
     turned = [
         _Turned(p.a, p.b, p.verdict, then[p.a, p.b])
@@ -154,7 +157,8 @@ def _set_aside(revision: Revision, inputs: Inputs, found: Answer) -> tuple[Cauti
     return (CautionAnswer("set aside", f"{what}; {effect}"),)
 
 
-def _stated_late(inputs: Inputs, revision: Revision) -> tuple[CautionAnswer, ...]:
+def _stated_late(revision: Revision, inputs: Inputs, past: Past) -> tuple[CautionAnswer, ...]:
+    """A question asked after its answer could be seen says so, with the looks that others had taken by then."""
     early = len({v.run for v in inputs.kept if v.before})
     if not early:
         return ()
@@ -163,6 +167,8 @@ def _stated_late(inputs: Inputs, revision: Revision) -> tuple[CautionAnswer, ...
         f"{early} of its {all_runs} runs had been recorded before this comparison was stated "
         f"(revision {revision.revision}): a question asked after its answer could be seen"
     )
+    if past.elsewhere:
+        text += f"; other comparisons of these groups had looked {past.elsewhere} {_plural('time', past.elsewhere)}"
     return (CautionAnswer("stated after data", text),)
 
 

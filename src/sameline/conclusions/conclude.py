@@ -9,6 +9,7 @@ from sqlalchemy import select
 
 from sameline.conclusions.answer import answer
 from sameline.conclusions.inputs import gather
+from sameline.conclusions.past import NO_PAST, past_of
 from sameline.conclusions.turns import because, turns
 from sameline.records import concluded
 from sameline.records.acts import Act
@@ -44,14 +45,18 @@ def bring_up_to_date(store: Store, comparison: int, *, by: str, at: str) -> Conc
 
 def answer_as_of(reading: Reading, revision: Revision) -> Answer:
     """The answer to a revision from the records as they were: what a look then must have found."""
-    return answer(revision, gather(reading, revision))
+    inputs = gather(reading, revision)
+    return answer(revision, inputs, past_of(reading, revision, inputs))
 
 
 def naive_answer(reading: Reading, conclusion: Conclusion, unit: str) -> Answer:
     """What one look says of a conclusion's data that takes each `unit` as independent evidence, for contrast."""
     then = replace(reading, position=conclusion.position, latest=False)
     revision = read_revision(then, conclusion.comparison, revision_id=conclusion.revision_id)
-    return answer_as_of(then, replace(revision, model="pooled", unit=unit, looks="single"))
+    alone = replace(
+        revision, model="pooled", procedure="tukey-kramer", unit=unit, looks="single", final_units=None, control=None
+    )
+    return answer(alone, gather(then, alone), NO_PAST)
 
 
 def _last_if_up_to_date(act: Act, comparison: int) -> int | None:

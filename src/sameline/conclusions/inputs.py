@@ -98,5 +98,5 @@ def gather(reading: Reading, revision: Revision) -> Inputs:
 
 
 def _with_values(scope: dict[int, int], found: list[Measurement]) -> tuple[int, ...]:
-    """The groups that have values, in the order in which they were registered."""
-    return tuple(sorted({scope[m.batch] for m in found}))
+    """The groups that have values, in the order in which their first runs were recorded: newcomers come last."""
+    return tuple(dict.fromkeys(scope[m.batch] for m in sorted(found, key=lambda m: m.run)))

@@ -4,12 +4,9 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 
 from sameline.records.answers import CautionAnswer, ComponentAnswer, GlobalTest, PairAnswer
-
-Unit = tuple[str, str | int]
-"""A group's label, and the code of its batch or the id of its run."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -33,6 +30,7 @@ class Judged:
         display: "lines", "letters", "matrix" or "control".
         pairs, components, cautions, test, critical_value: as in `sameline.records.answers.Answer`.
         engine: the versions that computed it.
+        guarantee, looks_state: as in `sameline.records.answers.Answer`.
     """
 
     groups: Mapping[str, GroupFigures]
@@ -43,7 +41,9 @@ class Judged:
     components: tuple[ComponentAnswer, ...] = ()
     cautions: tuple[CautionAnswer, ...] = ()
     test: GlobalTest | None = None
-    critical_value: float | None = field(default=None)
+    critical_value: float | None = None
+    guarantee: str | None = None
+    looks_state: str | None = None
 
 
 def finite(figure: float | None) -> float | None:
@@ -58,11 +58,3 @@ def sd(values: Iterable[float]) -> float | None:
         return None
     mean = math.fsum(known) / len(known)
     return math.sqrt(math.fsum((x - mean) ** 2 for x in known) / (len(known) - 1))
-
-
-def means_of(pairs: Iterable[tuple[Unit, float]]) -> dict[Unit, float]:
-    """The mean of each unit's values, units in order of first appearance; sums are exact."""
-    gathered: dict[Unit, list[float]] = {}
-    for key, value in pairs:
-        gathered.setdefault(key, []).append(value)
-    return {key: math.fsum(values) / len(values) for key, values in gathered.items()}

@@ -6,19 +6,23 @@ pooled, unequal, ranks: the units (replicates, run means or batch means) as they
 
 from __future__ import annotations
 
+import math
 import platform
+from dataclasses import dataclass, replace
 from functools import cache
 from importlib.metadata import version
 from typing import TYPE_CHECKING
 
 from sameline import __version__
-from sameline.conclusions.judged import GroupFigures, Judged, finite, means_of, sd
+from sameline.conclusions.judged import GroupFigures, Judged, finite, sd
+from sameline.conclusions.looks import Looking, over_all_looks
 from sameline.records.answers import CautionAnswer, ComponentAnswer, GlobalTest, PairAnswer
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable
+    from collections.abc import Iterable, Iterator
 
     from sameline.conclusions.inputs import Inputs, Value
+    from sameline.conclusions.past import Past
     from sameline.records.comparisons import Revision
     from sameline.stats.nested.pairs import NestedPairs
     from sameline.stats.pairs_result import PairsResult
@@ -35,13 +39,45 @@ def engine() -> str:
     )
 
 
-def judge(revision: Revision, inputs: Inputs) -> Judged:
-    """What the revision's model and procedure say.
+@dataclass(frozen=True, slots=True)
+class Unit:
+    """One unit of evidence: the group it belongs to, its mean, and how many values the mean is of."""
+
+    group: str
+    value: float
+    values: int
+
+
+def judge(revision: Revision, inputs: Inputs, past: Past) -> Judged:
+    """What the revision's model and procedure say, with its error rate kept over all looks.
 
     Raises:
         StatsError: the figures cannot be had from these values.
     """
-    return _nested(revision, inputs) if revision.model == "nested" else _units(revision, inputs)
+    model = _nested if revision.model == "nested" else _units
+
+    def again(alpha: float) -> Judged:
+        return model(replace(revision, alpha=alpha), inputs)
+
+    looking = Looking(revision, inputs, past, units_of(revision, inputs), again(revision.alpha), again)
+    return over_all_looks(looking)
+
+
+def units_of(revision: Revision, inputs: Inputs) -> tuple[Unit, ...]:
+    """The units of evidence, group by group: what the model takes as independent."""
+    kind = ("run" if revision.grouping == "batch" else "batch") if revision.model == "nested" else revision.unit
+    return tuple(_grouped(kind, _in_order(inputs)))
+
+
+def _grouped(kind: str, values: list[Value]) -> Iterator[Unit]:
+    if kind == "replicate":
+        yield from (Unit(v.group, v.value, 1) for v in values)
+        return
+    gathered: dict[tuple[str, str | int], list[float]] = {}
+    for v in values:
+        gathered.setdefault((v.group, v.batch if kind == "batch" else v.run), []).append(v.value)
+    for (group, _), own in gathered.items():
+        yield Unit(group, math.fsum(own) / len(own), len(own))
 
 
 def _in_order(inputs: Inputs) -> list[Value]:
@@ -56,10 +92,10 @@ def _in_order(inputs: Inputs) -> list[Value]:
 def _units(revision: Revision, inputs: Inputs) -> Judged:
     from sameline.stats import compare_pairs
 
-    values, groups = _unit_values(revision.unit, _in_order(inputs))
+    units = units_of(revision, inputs)
     result = compare_pairs(
-        values,
-        groups,
+        [unit.value for unit in units],
+        [unit.group for unit in units],
         procedure=revision.procedure,
         alpha=revision.alpha,
         control=inputs.control,
@@ -76,13 +112,6 @@ def _units(revision: Revision, inputs: Inputs) -> Judged:
         test=_test(result),
         critical_value=result.critical_value,
     )
-
-
-def _unit_values(unit: str, values: list[Value]) -> tuple[list[float], list[str]]:
-    if unit == "replicate":
-        return [v.value for v in values], [v.group for v in values]
-    means = means_of(((v.group, v.batch if unit == "batch" else v.run), v.value) for v in values)
-    return list(means.values()), [group for group, _ in means]
 
 
 def _pairs(result: PairsResult | NestedPairs) -> tuple[PairAnswer, ...]:
@@ -136,7 +165,7 @@ def _nested(revision: Revision, inputs: Inputs) -> Judged:
         inputs.margin,
         alternative=revision.alternative,
     )
-    spread = _unit_spread("run" if revision.grouping == "batch" else "batch", values)
+    spread = _unit_spread(units_of(revision, inputs))
     figures = zip(means.group, means.mean, means.lower, means.upper, strict=True)
     return Judged(
         groups={
@@ -152,10 +181,9 @@ def _nested(revision: Revision, inputs: Inputs) -> Judged:
     )
 
 
-def _unit_spread(unit: str, values: Iterable[Value]) -> dict[str, tuple[int, float | None]]:
+def _unit_spread(units: Iterable[Unit]) -> dict[str, tuple[int, float | None]]:
     """For each group, how many units it has and the standard deviation of their means."""
-    means = means_of(((v.group, v.batch if unit == "batch" else v.run), v.value) for v in values)
     by_group: dict[str, list[float]] = {}
-    for (group, _), mean in means.items():
-        by_group.setdefault(group, []).append(mean)
-    return {group: (len(units), sd(units)) for group, units in by_group.items()}
+    for unit in units:
+        by_group.setdefault(unit.group, []).append(unit.value)
+    return {group: (len(means), sd(means)) for group, means in by_group.items()}

@@ -22,6 +22,8 @@ unequal: the units as they are, a variance for each group; ranks: the units' ran
 """
 
 UNITS = ("run", "batch", "replicate")
+LOOKS = ("open", "planned", "single")
+SPENDINGS = ("obrien-fleming", "pocock")
 WITH_CONTROL = "dunnett"
 
 
@@ -62,6 +64,7 @@ def check(statement: Statement) -> None:
         )
     _check_groups(statement)
     _check_control(statement)
+    _check_looks(statement)
     if statement.unit == "batch" and statement.grouping == "batch":
         raise CallError("batches that are the groups cannot be the units too", advice="use --unit run")
 
@@ -91,6 +94,26 @@ def _check_control(statement: Statement) -> None:
             "one-sided questions are asked against a control", advice="use --procedure dunnett --control CODE"
         )
     _known("alternative", statement.alternative, ("two-sided", "less", "greater"))
+
+
+def _check_looks(statement: Statement) -> None:
+    _known("way of looking", statement.looks, LOOKS)
+    if statement.looks == "planned" and statement.final_units is None:
+        raise CallError("a plan states its final amount of data", advice="give --units, of all groups together")
+    if statement.looks == "open" and statement.final_units is not None:
+        raise CallError("looks without end have no final amount of data", advice="leave out --units, or plan the looks")
+    if statement.final_units is not None and statement.final_units < 3:
+        raise CallError(f"{statement.final_units} units in all cannot be compared", advice="plan three or more")
+    if statement.looks == "planned" and (statement.procedure != "tukey-kramer" or not statement.groups):
+        raise CallError(
+            "planned looks are for all pairs of listed groups", advice="list the groups, or use open or single looks"
+        )
+    if statement.spending is not None:
+        _known("spending", statement.spending, SPENDINGS)
+        if statement.looks != "planned":
+            raise CallError("only planned looks spend by a function", advice="leave out --spending")
+    if statement.alternative != "two-sided" and statement.looks != "single":
+        raise CallError("one-sided questions are asked at a single look", advice="use --looks single")
 
 
 def _known(what: str, word: str, words: tuple[str, ...]) -> None:

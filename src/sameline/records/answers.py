@@ -45,6 +45,9 @@ class PairAnswer:
         verdict: "differs and matters", "differs", "equivalent" or "undecided".
         reason: why the pair cannot be judged, if it cannot.
         single_look_p: the p-value that this look alone would have had, where looks are counted.
+        p_now: the overall p-value of this look's data alone, without what earlier looks had shown.
+        log_evidence: natural log of the pair's e-value, where there is one.
+        share: share of the error rate that the pair's interval spends.
     """
 
     a: str
@@ -60,6 +63,14 @@ class PairAnswer:
     verdict: str
     reason: str | None = None
     single_look_p: float | None = None
+    p_now: float | None = None
+    log_evidence: float | None = None
+    share: float | None = None
+
+    @property
+    def receded(self) -> bool:
+        """Claimed at an earlier look, while the data of this look alone would not claim it."""
+        return bool(self.differs) and None not in (self.p_now, self.p_value) and self.p_now > self.p_value  # type: ignore[operator]
 
 
 @dataclass(frozen=True, slots=True)
@@ -106,6 +117,8 @@ class Answer:
         test: of all groups alike, if there is one.
         critical_value: of the simultaneous procedure, if it has one.
         engine: the versions that computed it.
+        guarantee: what the error rate over all looks rests on, where looks are counted.
+        looks_state: what the next look must remember, as canonical JSON.
     """
 
     inputs: bytes
@@ -122,6 +135,8 @@ class Answer:
     test: GlobalTest | None
     critical_value: float | None
     engine: str
+    guarantee: str | None = None
+    looks_state: str | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -72,6 +72,8 @@ def record(
         df_within=test.df_within,
         p_value=test.p_value,
         critical_value=answer.critical_value,
+        guarantee=answer.guarantee,
+        looks_state=answer.looks_state,
         engine=answer.engine,
     )
     for cause in causes:
@@ -129,6 +131,9 @@ def _add_pair(act: Act, conclusion: int, groups: dict[str, int], p: PairAnswer) 
         verdict=p.verdict,
         reason=p.reason,
         single_look_p=p.single_look_p,
+        p_now=p.p_now,
+        log_evidence=p.log_evidence,
+        share=p.share,
     )
 
 
@@ -155,6 +160,12 @@ def versions(reading: Reading, comparison: int) -> list[Conclusion]:
     """Every version of a comparison's conclusion as of the reading, oldest first."""
     query = _heads(reading).where(t.conclusion.c.comparison == comparison).order_by(t.conclusion.c.version)
     return _read(reading, query)
+
+
+def before_look(reading: Reading, comparison: int, look: int) -> Conclusion | None:
+    """The last conclusion of a comparison made at an earlier look than this one; None where there is none."""
+    query = _heads(reading).where(t.conclusion.c.comparison == comparison, t.conclusion.c.look < look)
+    return _one(reading, query.order_by(t.conclusion.c.version.desc()).limit(1))
 
 
 def all_versions(reading: Reading) -> list[tuple[int, int]]:
@@ -218,6 +229,8 @@ def _conclusion(connection: Connection, head: Any) -> Conclusion:  # noqa: ANN40
         test=_test(head),
         critical_value=head["critical_value"],
         engine=head["engine"],
+        guarantee=head["guarantee"],
+        looks_state=head["looks_state"],
     )
     return Conclusion(
         id=head["id"],
@@ -269,6 +282,9 @@ def _pair(row: Any, label: dict[int, str]) -> PairAnswer:  # noqa: ANN401 - a ro
         "verdict",
         "reason",
         "single_look_p",
+        "p_now",
+        "log_evidence",
+        "share",
     )
     differs = None if row["differs"] is None else bool(row["differs"])
     return PairAnswer(label[row["a"]], label[row["b"]], differs=differs, **{f: row[f] for f in fields})

@@ -199,14 +199,17 @@ def said_plainly(where: str) -> Iterator[None]:
 
 
 def _in_plain_words(text: str) -> tuple[str, str | None]:
+    first = text.splitlines()[0]
     for sign, problem, advice in _SIGNS:
         if sign in text.lower():
-            return problem, advice
-    return f"the database refused: {text.splitlines()[0]}", None
+            return problem.format(first), advice
+    return f"the database refused: {first}", None
 
 
 _PERMISSIONS = "check the permissions of the file and of its folder, which must be writable too"
 _HELD = f"another writer held the store for more than {engines.BUSY_SECONDS} s"
+_UNREACHED = "the server cannot be reached: {}"
+_REACH = "check the URL's host and port, and that the server runs"
 _TRY_AGAIN = "try again; if no other Sameline runs, look for a backup or sync program that holds the file"
 
 _SIGNS = (
@@ -214,12 +217,18 @@ _SIGNS = (
     ("malformed", "the store is damaged", "restore it from a backup; `sameline verify` tells what can still be read"),
     ("locked", _HELD, _TRY_AGAIN),
     ("lock timeout", _HELD, "try again; look for a writer that hangs, in the server's list of sessions"),
-    ("readonly", "the store can be read but not written", _PERMISSIONS),
+    ("readonly", "the store, or the folder it is in, cannot be written", _PERMISSIONS),
     ("unable to open", "the store cannot be opened", _PERMISSIONS),
     ("is full", "the disk is full; nothing was recorded", "make room, then do it again"),
     ("no space left", "the disk is full; nothing was recorded", "make room, then do it again"),
     ("disk i/o error", "the disk cannot be read or written", "nothing was recorded; check the disk"),
     ("permission denied", "the database does not allow this", "ask whoever runs the server for the rights to it"),
+    ("authentication failed", "the server does not let this user in: {}", "check the user and the password"),
+    ("does not exist", "the database lacks something: {}", "check the URL's user and database"),
+    ("resolve host", _UNREACHED, _REACH),
+    ("translate host", _UNREACHED, _REACH),
+    ("connection", _UNREACHED, _REACH),
+    ("timeout", _UNREACHED, _REACH),
     ("records are never", "records are never changed or deleted", "amend instead"),
 )
 """What a driver's message contains, what that means, and what to do."""

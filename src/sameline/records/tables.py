@@ -306,6 +306,8 @@ conclusion = _recorded(
     Column("df_within", Float(53)),
     Column("p_value", Float(53)),
     Column("critical_value", Float(53)),
+    Column("guarantee", Text),  # what the error rate over all looks rests on
+    Column("looks_state", Text),  # what the next look must remember (canonical JSON)
     Column("engine", Text, nullable=False),
     UniqueConstraint("comparison", "version"),
     CheckConstraint("state IN ('answered', 'not computed')", name="state"),
@@ -351,6 +353,9 @@ conclusion_pair = _recorded(
     Column("verdict", Text, nullable=False),
     Column("reason", Text),  # why the pair cannot be judged, if it cannot
     Column("single_look_p", Float(53)),
+    Column("p_now", Float(53)),  # overall p-value of this look's data alone
+    Column("log_evidence", Float(53)),
+    Column("share", Float(53)),  # of the error rate that its interval spends
     CheckConstraint(
         "verdict IN ('differs and matters', 'differs', 'equivalent', 'undecided')",
         name="verdict",

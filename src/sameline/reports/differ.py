@@ -29,6 +29,11 @@ PROCEDURE_WORDS = {
     "steel-dwass": "Steel-Dwass",
     "dunn": "Dunn with Holm",
 }
+LOOKS_WORDS = {
+    "open": "error rate {rate} over all pairs and all looks, however many",
+    "planned": "error rate {rate} over all pairs and all looks up to {units} units",
+    "single": "error rate {rate} over all pairs, at one look",
+}
 _NESTING = {
     "batch": "run within batch",
     "material": "run within batch within material",
@@ -83,6 +88,17 @@ def contrast_text(conclusion: Conclusion, naive: Answer, subject: Subject, unit:
     return ["", f"  {words} would say:", *table(headings, rows, "<><><<")]
 
 
+def single_look_text(conclusion: Conclusion, subject: Subject) -> list[str]:
+    """What each pair's look would have said had it been the only one, beside what was concluded."""
+    rows = [
+        (f"{p.b} minus {p.a}", p_value(p.single_look_p), p_value(p.p_value), verdict_words(p))
+        for p in conclusion.answer.pairs
+    ]
+    rate = percent(subject.revision.alpha)
+    words = f"  For contrast, this look alone: below {rate} a single look would have claimed the difference."
+    return ["", words, *table(("pair", "p-value alone", "overall p", "concluded"), rows, "<>><")]
+
+
 def overview_text(rows: Sequence[tuple[str, Conclusion | None, bool]]) -> list[str]:
     """Every comparison in one table."""
     if not rows:
@@ -119,7 +135,8 @@ def _head(conclusion: Conclusion, subject: Subject) -> list[str]:
     recorded = f"recorded {moment(conclusion.at)} by {conclusion.person}, entry {conclusion.entry}"
     lines = [
         f"{conclusion.name}: {about}",
-        f"  {how} ({units}); family error rate {percent(revision.alpha)}; {margin}",
+        f"  {how} ({units}); {margin}",
+        f"  {LOOKS_WORDS[revision.looks].format(rate=percent(revision.alpha), units=revision.final_units)}",
         f"  version {conclusion.version}, look {conclusion.look}, on {data}; {recorded}",
     ]
     if subject.method:
@@ -195,8 +212,15 @@ def _pairs(conclusion: Conclusion, subject: Subject, *, all_pairs: bool) -> list
     decimals = subject.decimals + 1
     rows = [_pair_row(p, decimals) for p in shown]
     confidence = percent(1 - subject.revision.alpha)
-    headings = ("pair", "difference", f"{confidence} simultaneous interval", "p-value", "verdict")
+    once = subject.revision.looks == "single"
+    width = "simultaneous interval" if once else "interval over all looks"
+    headings = ("pair", "difference", f"{confidence} {width}", "p-value" if once else "overall p", "verdict")
     lines = table(headings, rows, "<><><")
+    lines += [
+        f"  * {p.a} and {p.b} were shown to differ at an earlier look; the data of this look alone would not show it."
+        for p in shown
+        if p.receded
+    ]
     if rest:
         lines.append(f"  {tally(conclusion)}; --all lists the other pairs too.")
     return lines
@@ -232,6 +256,8 @@ def _spread(conclusion: Conclusion, subject: Subject) -> list[str]:
 
 def _cautions(conclusion: Conclusion, subject: Subject) -> list[str]:
     texts = [c.text for c in conclusion.answer.cautions]
+    if conclusion.answer.guarantee:
+        texts.append(f"the error rate over all looks is {conclusion.answer.guarantee}")
     if subject.safety_critical:
         texts.append(
             "safety-critical: this concerns the mean results of the lots tested. It releases no part; the product "

@@ -105,10 +105,19 @@ def judge_single(
 
 
 def keep_interval(memory: PairMemory, found: PairInput) -> PairMemory:
-    """The memory with the interval of a look that spends, for the looks after it that do not."""
+    """The memory with the interval of a look that spends, for the looks after it that do not.
+
+    The intervals of all looks hold together, so what they have in common holds too. Where they have nothing in common
+    (one of them is wrong, which the error rate allows, or a slip that nobody has amended yet) the newest is kept.
+    """
     if found.p_now is None or found.missing or found.half_width == float("inf"):
         return memory
-    return replace(memory, lower=found.difference - found.half_width, upper=found.difference + found.half_width)
+    newest = found.difference - found.half_width, found.difference + found.half_width
+    lower = newest[0] if memory.lower is None else max(memory.lower, newest[0])
+    upper = newest[1] if memory.upper is None else min(memory.upper, newest[1])
+    if lower > upper:
+        lower, upper = newest
+    return replace(memory, lower=lower, upper=upper)
 
 
 def _notes(total: int, units: int, state: LooksState, *, spends: bool) -> list[str]:
