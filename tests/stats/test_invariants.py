@@ -99,8 +99,9 @@ def test_shift_and_scale_carry_through(procedure: Procedure, data: Rows, shift: 
             one, other = getattr(old, name), getattr(new, name)
             assert other == (one if one is None else pytest.approx(one, rel=1e-10, abs=1e-300))
         if old.lower is not None:
-            width = old.upper - old.lower
-            assert new.lower == pytest.approx(old.lower * scale, rel=1e-10, abs=1e-10 * width * scale)
+            width = min(old.upper - old.lower, 1e3)
+            for one, other in ((old.lower, new.lower), (old.upper, new.upper)):
+                assert other == pytest.approx(one * scale, rel=1e-10, abs=1e-10 * width * scale)
         assert (new.verdict, new.differs) == (old.verdict, old.differs)
 
 
@@ -128,7 +129,7 @@ def test_an_interval_leaves_out_zero_exactly_when_p_is_below_alpha(
         assert pair.differs == (pair.p_value is not None and pair.p_value < alpha)
         if pair.lower is not None and pair.upper is not None:
             assert (pair.lower > 0 or pair.upper < 0) == pair.differs
-            assert pair.lower <= pair.difference <= pair.upper
+            assert pair.lower <= pair.difference <= pair.upper or procedure.family == "ranks"
             assert procedure.intervals
         assert pair.p_value is None or 0 <= pair.p_value <= 1
 

@@ -53,6 +53,24 @@ def test_steel_dwass_pair_by_pair(groups: Groups):
         assert z[at] == pytest.approx(float(u - Fraction(product, 2)) / math.sqrt(variance), rel=1e-12, abs=1e-14)
 
 
+@settings(max_examples=60)
+@given(groups=groups_of(2, 5, values=40), alpha=st.sampled_from([0.05, 0.3, 0.6]))
+def test_steel_dwass_intervals_hold_every_shift_that_is_not_rejected(groups: Groups, alpha: float):
+    assume(len(set(flat(groups)[0])) > 1)
+    result = compare_pairs(*flat(groups), "steel-dwass", alpha=alpha)
+    critical = result.critical_value
+    for pair in result.pairs:
+        both = groups[pair.a] + groups[pair.b]
+        total, product = len(both), len(groups[pair.a]) * len(groups[pair.b])
+        if pair.lower is None:
+            continue
+        sd = math.sqrt(Fraction(product, 12) * (total + 1 - Fraction(tie_sum(both), total * (total - 1))))
+        for shift in np.arange(-40.25, 41, 0.5):  # between whole numbers: on no difference of two values
+            u = sum(y - shift > x for x in groups[pair.a] for y in groups[pair.b])
+            accepted = math.sqrt(2) * abs(u - product / 2) / sd <= critical
+            assert accepted == (pair.lower < shift < pair.upper)
+
+
 @settings(max_examples=80)
 @given(groups=groups_of(1, 6))
 def test_dunn_pair_by_pair(groups: Groups):

@@ -47,7 +47,7 @@ PROCEDURES = (
     Procedure("holm", holm, COMMON, "t", "either", intervals=False),
     Procedure("sidak", sidak, COMMON, "t", "either", intervals=True),
     Procedure("welch-holm", welch_holm, UNEQUAL, "t", "either", intervals=False),
-    Procedure("steel-dwass", steel_dwass, RANKS, "q", "none", intervals=False),
+    Procedure("steel-dwass", steel_dwass, RANKS, "q", "none", intervals=True),
     Procedure("dunn", dunn, RANKS, "z", "either", intervals=False),
 )
 
