@@ -8,7 +8,7 @@ from sameline.conclusions.recompute import CHECKS, Verification
 from sameline.records.answers import ANSWERED, Conclusion
 from sameline.records.trail import TrailEntry
 from sameline.reports.changes import tally, turn_words
-from sameline.reports.text import count, listed, moment, table
+from sameline.reports.text import count, listed, moment, p_value, table
 
 _TABLE_WORDS = {
     "measurement": ("value", "values"),
@@ -27,7 +27,20 @@ def history_text(versions: Sequence[Conclusion]) -> list[str]:
         lines.append(f"v{c.version}, look {c.look}: {moment(c.at)}, {c.person}, entry {c.entry} ({causes})")
         lines.append(f"    {said}")
         lines += [f"    {turn_words(turn, c.version)}, because of {turn.because}" for turn in c.turns]
+        lines += _evidence(c)
     return lines
+
+
+def _evidence(conclusion: Conclusion) -> list[str]:
+    """The pair with the strongest evidence, and what the look alone would have said of its strongest."""
+    judged = [p for p in conclusion.answer.pairs if p.p_value is not None]
+    alone = [p for p in judged if p.single_look_p is not None]
+    if not judged or not alone:
+        return []
+    first = min(judged, key=lambda p: p.p_value or 0.0)
+    least = min(alone, key=lambda p: p.single_look_p or 0.0)
+    strongest = f"    strongest evidence: {first.a} and {first.b}, overall p {p_value(first.p_value)}"
+    return [f"{strongest}; this look alone {p_value(least.single_look_p)} ({least.a} and {least.b})"]
 
 
 def trail_text(entries: Sequence[TrailEntry]) -> list[str]:
