@@ -21,7 +21,7 @@ import numpy as np
 
 from sameline.errors import StatsError
 from sameline.stats.distributions import t_isf
-from sameline.stats.noncentral_t import noncentral_t_two_sided
+from sameline.stats.noncentral_t import exceedance
 from sameline.stats.verdicts import check_alpha
 
 if TYPE_CHECKING:
@@ -153,7 +153,7 @@ class Family:
 
     def power(self, difference: float, standard_error: float, df: float) -> float:
         """P(|T| > c) for a true difference, both tails counted."""
-        return noncentral_t_two_sided(self.critical(df), df, difference / standard_error)
+        return exceedance(self.critical(df), df, abs(difference) / standard_error, two_sided=True)
 
 
 @lru_cache(maxsize=4096)

@@ -46,6 +46,11 @@ class IndependentMeans:
         bend = (0.5 * precision.curve - slope[:, None] * slope[None, :] / w) / w**2
         return IndependentMeans(Contrasts(1.0 / w, -slope / w**2, bend))
 
+    def taken(self, place: NDArray[np.intp]) -> IndependentMeans:
+        """Some of the groups, in another order."""
+        one = self.each
+        return IndependentMeans(Contrasts(one.variance[place], one.slope[:, place], one.bend[:, :, place]))
+
     def means(self) -> Contrasts:
         """The k group means."""
         return self.each
@@ -88,6 +93,11 @@ class CorrelatedMeans:
         both = inner[:, None] @ slope[None, :] @ phi
         bend = 0.5 * (phi @ curve @ phi) - 0.5 * (both + both.swapaxes(0, 1))
         return CorrelatedMeans(phi, -inner, bend)
+
+    def taken(self, place: NDArray[np.intp]) -> CorrelatedMeans:
+        """The groups in another order."""
+        at = np.ix_(place, place)
+        return CorrelatedMeans(*(each[..., at[0], at[1]] for each in (self.variance, self.slope, self.bend)))
 
     def means(self) -> Contrasts:
         """The k group means."""

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -54,6 +54,12 @@ class Estimate:
     exact_df: float | None = None
     squares: MeanSquares | None = None
     criterion_at: Callable[[NDArray[np.float64]], Evaluated] | None = None
+
+    def taken(self, place: NDArray[np.intp], shift: float) -> Estimate:
+        """Some of the groups, their means moved by `shift`; not a fit of its own any more."""
+        return replace(
+            self, criterion=None, squares=None, means=self.means[place] + shift, spread=self.spread.taken(place)
+        )
 
     def judged(self, contrasts: Contrasts, method: str) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
         """Standard errors and degrees of freedom of m contrasts by one of `DF_METHODS`, shape (m,) each."""

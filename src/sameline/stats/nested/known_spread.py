@@ -1,19 +1,25 @@
 """The run-to-run spread known from elsewhere, for comparisons of batches that have one run each.
 
 With one run a batch the run's own spread is in every difference and cannot be seen in the data. It can be brought in:
-from other batches that have several runs of the same characteristic, or as a figure from the method's validation.
-The variance of a mean of n replicates of one run is then θ_run + θ_replicate/n, its degrees of freedom are combined
-from both sources (Satterthwaite 1946, Biometrics Bull. 2:110-114), and the conclusion names the source.
+
+* from other batches that have several runs of the same characteristic: they join the fit as further groups that are
+  not compared, so that their evidence on both components counts with its own weight (REML, Kenward-Roger);
+* as a figure from the method's validation: the variance of a mean of n replicates of one run is then
+  θ_run + θ_replicate/n, with degrees of freedom combined from both sources (Satterthwaite 1946, Biometrics Bull.
+  2:110-114).
+
+Either way the conclusion names the source.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from sameline.errors import StatsError
+from sameline.stats.labels import as_text
 from sameline.stats.nested.contrasts import Contrasts, IndependentMeans
 from sameline.stats.nested.estimate import Estimate, estimate_nested
 from sameline.stats.nested.layout import layout_of, lower_units
@@ -24,6 +30,7 @@ if TYPE_CHECKING:
     from collections.abc import Iterable
 
     from sameline.stats.nested.levels import Chain
+    from sameline.stats.nested.rows import Rows
 
 
 @dataclass(frozen=True, slots=True)
@@ -39,6 +46,7 @@ class KnownSpread:
         includes_replicate: whether `run` holds the replicates' spread as well (every run of the source had one value).
         batches: labels of the batches it comes from, in order of first appearance; () for a stated figure.
         source: a few words for the conclusion.
+        data: values, batches and runs it was estimated from; None for a stated figure.
     """
 
     run: float
@@ -49,6 +57,7 @@ class KnownSpread:
     includes_replicate: bool = False
     batches: tuple[str, ...] = ()
     source: str = ""
+    data: tuple[tuple[float, ...], tuple[str, ...], tuple[str, ...]] | None = field(default=None, repr=False)
 
     @property
     def df(self) -> float:
@@ -90,7 +99,8 @@ def known_spread(values: Iterable[Any], batches: Iterable[Any], runs: Iterable[A
     Raises:
         StatsError: no batch has a second run, or the input cannot be read.
     """
-    rows = read_rows(values, batches, None, runs, None)
+    given = [list(column) for column in (values, batches, runs)]
+    rows = read_rows(given[0], given[1], None, given[2], None)
     chain = chain_of(rows)
     if "run" not in chain.random:
         raise StatsError(
@@ -99,7 +109,12 @@ def known_spread(values: Iterable[Any], batches: Iterable[Any], runs: Iterable[A
             advice="take the spread from batches that have several runs, or state it with its degrees of freedom",
         )
     estimate = estimate_nested(layout_of(chain), rows.place)
-    return _from_estimate(estimate, rows.groups, source)
+    data = (
+        tuple(float(value) for value in given[0]),
+        tuple(as_text(label) for label in given[1]),
+        tuple(as_text(label) for label in given[2]),
+    )
+    return replace(_from_estimate(estimate, rows.groups, source), data=data)
 
 
 def _from_estimate(estimate: Estimate, batches: tuple[str, ...], source: str) -> KnownSpread:
@@ -121,11 +136,29 @@ def _from_estimate(estimate: Estimate, batches: tuple[str, ...], source: str) ->
 def estimate_with(chain: Chain, known: KnownSpread) -> Estimate:
     """Means of groups with one run each, judged with a known run-to-run spread.
 
-    Replicates of the data's own runs give the replicate component; without any, the known one stands in.
-
     Raises:
         StatsError: neither the data nor the source have replicates, and the source does not include their spread.
     """
+    return _stated(chain, known) if known.data is None else _joined(chain.rows, known.data)
+
+
+def _joined(rows: Rows, data: tuple[tuple[float, ...], tuple[str, ...], tuple[str, ...]]) -> Estimate:
+    """One fit of the groups compared and the source's batches, which stay out of the comparison."""
+    values, batches, runs = data
+    codes = rows.units["group"].tolist()
+    joint = read_rows(
+        [*(rows.y + rows.origin).tolist(), *values],
+        [*(f"0{code:09d}" for code in codes), *(f"1{label}" for label in batches)],
+        None,
+        [*("one" for _ in codes), *runs],
+        None,
+    )
+    estimate = estimate_nested(layout_of(chain_of(joint)), joint.place)
+    return estimate.taken(rows.place, joint.origin - rows.origin)
+
+
+def _stated(chain: Chain, known: KnownSpread) -> Estimate:
+    """Replicates of the data's own runs give the replicate component; without any, the known one stands in."""
     rows = chain.rows
     units = lower_units(rows.y, rows.units["group"])
     k, within_df = units.size.size, rows.y.size - units.size.size

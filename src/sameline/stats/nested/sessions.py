@@ -236,13 +236,12 @@ def estimate_crossed(chain: Chain, place: NDArray[np.intp]) -> Estimate:
     _refuse_confounded(design, crossed_criterion(design, starts[0]).information)
     theta, found = minimise(lambda at: crossed_criterion(design, at), starts)
     w = found.precision
-    at = np.ix_(place, place)
     return Estimate(
         random=design.random,
         theta=theta,
         criterion=found.value,
         means=found.means[place],
-        spread=CorrelatedMeans.of(w.value[at], w.slope[:, at[0], at[1]], w.curve[:, :, at[0], at[1]]),
+        spread=CorrelatedMeans.of(w.value, w.slope, w.curve).taken(place),
         expected=inverse(found.information),
         observed=inverse_of_free(0.5 * found.hessian, theta > 0.0),
         criterion_at=lambda at: crossed_criterion(design, at),

@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from sameline.errors import StatsError
-from sameline.stats.noncentral_t import noncentral_t_sf
+from sameline.stats.noncentral_t import exceedance
 from sameline.stats.plans import Family
 from sameline.stats.verdicts import DIFFERS, EQUIVALENT
 
@@ -129,7 +129,7 @@ class _Now:
         error, df = self.with_more(more)
         c = wanted.family.critical(df)
         margin = wanted.margin or 0.0
-        sides = [noncentral_t_sf(c, df, (margin + side * self.difference) / error) for side in (-1.0, 1.0)]
+        sides = [exceedance(c, df, (margin + side * self.difference) / error, two_sided=False) for side in (-1.0, 1.0)]
         return max(0.0, sides[0] + sides[1] - 1.0)
 
 
