@@ -82,6 +82,7 @@ def read_files(
     register: Register,
     *,
     maps: Sequence[HeadingMap] = (),
+    sheets: Sequence[str] = (),
     limit: int = SIZE_LIMIT,
     progress: Progress | None = None,
 ) -> Intake:
@@ -92,13 +93,14 @@ def read_files(
         register: what is registered and recorded.
         maps: heading maps that a person has confirmed. Our own headings need none; another table is read with the map
             that fits its headings, and refused when none does or several do.
+        sheets: names of the sheets to read of workbooks; empty for all.
         limit: bytes that a file, unpacked too, may have.
         progress: is told how far reading has come.
 
     Raises:
         CallError: a file cannot be opened, or the register's zone is no time zone.
     """
-    reader = _Reader(register, maps, limit, progress)
+    reader = _Reader(register, maps, sheets, limit, progress)
     with _no_collection():
         for path in paths:
             reader.read(path if isinstance(path, RawFile) else load(path, limit))
@@ -122,11 +124,13 @@ class _Reader:
         self,
         register: Register,
         maps: Sequence[HeadingMap],
+        sheets: Sequence[str],
         limit: int,
         progress: Progress | None,
     ) -> None:
         self._register = register
         self._maps = maps
+        self._sheets = sheets
         self._limit = limit
         self._progress = progress
         self._codes = Codes(register)
@@ -151,7 +155,7 @@ class _Reader:
             self._close(book, raw.name)
             return
         try:
-            tables = open_tables(raw, self._maps, self._limit)
+            tables = open_tables(raw, self._maps, self._sheets, self._limit)
         except UnreadableError as error:
             book.add(error.row, None, None, error.problem, error.suggestion)
             self._close(book, raw.name)
@@ -164,22 +168,30 @@ class _Reader:
 
     def _read_tables(self, choices: list[list[Table]]) -> None:
         """Read the tables of one file; each is given in the ways in which its rows can be parted into cells."""
-        several = len(choices) > 1
         books = []
         for choice in choices:
             book = FindingBook(choice[0].file, choice[0].sheet)
-            books.append((choice, book, choose_layout(choice, self._maps, book)))
-        some = any(chosen is not None for _, _, chosen in books)
-        for (table, *_), book, chosen in books:
-            if chosen is not None:
+            books.append((choice[0], book, choose_layout(choice, self._maps, book)))
+        some = any(chosen is not None and not table.hidden for table, _, chosen in books)
+        for table, book, chosen in books:
+            if chosen is not None and not (table.hidden and not self._sheets):
                 self._read_table(*chosen, book)
                 continue
-            if several and some and not book:
-                problem = "the sheet has no headings of ours and fits no map"
-                book.add(None, None, None, problem, "it would be left out", question=True)
-            elif not book:
-                report_missing(table, book)
-            self._close(book, table.file, table.sheet)
+            aside = FindingBook(table.file, table.sheet) if table.hidden else book
+            self._left_out(table, aside, fits=chosen is not None, some=some)
+            self._close(aside, table.file, table.sheet)
+
+    def _left_out(self, table: Table, book: FindingBook, *, fits: bool, some: bool) -> None:
+        """Say why a table is not read, unless that has been said."""
+        if book:
+            return
+        if fits:
+            book.add(None, None, None, "the hidden sheet holds results", "they would be left out", question=True)
+        elif some and not table.hidden:
+            problem = "the sheet has no headings of ours and fits no map"
+            book.add(None, None, None, problem, "it would be left out", question=True)
+        elif not some:
+            report_missing(table, book)
 
     def _read_table(self, table: Table, layout: Layout, book: FindingBook) -> None:
         form = layout.form
@@ -219,7 +231,7 @@ class _Reader:
         return maker.make(gatherer.groups, frozenset(doubtful))
 
     def _gather(self, table: Table, layout: Layout, lines: Lines, gatherer: Gatherer) -> None:
-        rows: Iterator[Row] = dropwhile(lambda row: row[0] <= layout.row, table.rows())
+        rows: Iterator[Row] = dropwhile(lambda row: row[0] <= layout.row, table.rows(layout.form.decimal or "."))
         with explaining(table):
             gatherer.take(lines.read(rows if self._progress is None else self._told(table, rows)))
         if not gatherer.groups and not lines.loose:

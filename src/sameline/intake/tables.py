@@ -7,6 +7,8 @@ from contextlib import contextmanager
 from itertools import islice
 from typing import Protocol
 
+from sameline.intake.figures import DecimalSign
+
 HEAD = 50
 """The headings are looked for among so many rows."""
 
@@ -29,15 +31,20 @@ class Table(Protocol):
     Attributes:
         file: the file's name without folders.
         sheet: the sheet's name; None for a text file.
+        hidden: whether the workbook hides it.
         point_is_usual: whether a decimal point is expected where nothing is stated.
     """
 
     file: str
     sheet: str | None
+    hidden: bool
     point_is_usual: bool
 
-    def rows(self) -> Iterator[Row]:
+    def rows(self, decimal: DecimalSign = ".") -> Iterator[Row]:
         """All rows with their numbers, from 1; blank rows may be left out.
+
+        Args:
+            decimal: the decimal sign to write the numbers of a workbook with, which have none of their own.
 
         Raises:
             Exception: the rest cannot be read; `explained` says why.

@@ -7,13 +7,13 @@ import csv
 import io
 from collections.abc import Callable, Iterator, Mapping
 
+from sameline.intake.figures import DecimalSign
 from sameline.intake.rawfiles import RawFile
 from sameline.intake.tables import Row, UnreadableError
 
 DELIMITERS = (",", ";", "\t", "|")
 _STEP = 1 << 20
 _KNOWN_AS = {
-    b"PK\x03\x04": "a packed file",
     b"\xd0\xcf\x11\xe0": "an old or a password-protected workbook",
     b"%PDF": "a PDF document",
     b"\x89PNG": "a picture",
@@ -35,6 +35,7 @@ class TextTable:
     """
 
     sheet: str | None = None
+    hidden = False
 
     def __init__(self, file: str, data: bytes, encoding: str, delimiter: str) -> None:
         self.file = file
@@ -44,7 +45,7 @@ class TextTable:
         self._encoding = encoding
         self._line: Callable[[], int] = int  # tells the line that reading has come to
 
-    def rows(self) -> Iterator[Row]:
+    def rows(self, decimal: DecimalSign = ".") -> Iterator[Row]:  # noqa: ARG002 - text has its own sign
         """All rows with their numbers; a row may run over several lines where a cell in quotes does."""
         text = io.TextIOWrapper(io.BytesIO(self._data), encoding=self._encoding, newline="")
         reader = csv.reader(text, delimiter=self.delimiter, strict=True)
