@@ -188,3 +188,15 @@ def test_no_path_to_a_leaf_that_is_not_there(call: tuple[int, int]):
 def test_no_path_from_a_later_tree_to_an_earlier(call: tuple[int, int]):
     with pytest.raises(LedgerError, match="cannot extend"):
         consistency_path(*call, node_reader(tree(5)[1]))
+
+
+def test_bytes_do_not_move_between_neighbouring_hashes():
+    # A node hashes two hashes run together; a byte moved from one to the other would not be seen in the root.
+    _, hashes = tree(8)
+    node, top = node_reader(hashes), root(hashes)
+    first, *rest = inclusion_path(2, 8, node)
+    with pytest.raises(ProofError, match="a hash has the wrong length: got 33 bytes, want 32 bytes"):
+        verify_inclusion(hashes[2] + first[:1], 2, 8, [first[1:], *rest], top)
+    (right,) = consistency_path(4, 8, node)
+    with pytest.raises(ProofError, match="a hash has the wrong length: got 33 bytes, want 32 bytes"):
+        verify_consistency(4, 8, [right[1:]], root(hashes[:4]) + right[:1], top)
