@@ -77,5 +77,10 @@ def say_changes(outcome: Outcome, *, as_json: bool = False) -> None:
         write_json(outcome_document(outcome.entry, outcome.runs, outcome.conclusions))
     else:
         write(change_line(conclusion) for conclusion in outcome.conclusions)
+    say_behind(outcome)
+
+
+def say_behind(outcome: Outcome) -> None:
+    """Say which comparisons an act left behind, and why."""
     for name, reason in outcome.behind:
         say(f"{name} is BEHIND: it could not be brought up to date ({reason}); the next act tries again")

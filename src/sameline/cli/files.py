@@ -15,6 +15,7 @@ from sameline.cli.common import (
     StoreOption,
     open_store,
     say,
+    say_behind,
     say_changes,
     write,
     write_json,
@@ -84,10 +85,15 @@ def _report(taken: Taken, *, as_json: bool) -> None:
 
 def _show(taken: Taken, *, as_json: bool) -> None:
     from sameline.lab.outcomes import by_source
+    from sameline.reports.documents import outcome_document
     from sameline.reports.runs import runs_summary
 
+    if as_json:
+        write_json([outcome_document(outcome.entry, outcome.runs, outcome.conclusions) for outcome in taken.outcomes])
     for (source, drafts), outcome in zip(by_source(taken.intake), taken.outcomes, strict=True):
-        if not as_json:
-            say(f"{source.name}: taken in, entry {outcome.entry}")
-            write(runs_summary(outcome.runs, drafts, taken.facts))
-        say_changes(outcome, as_json=as_json)
+        if as_json:
+            say_behind(outcome)
+            continue
+        say(f"{source.name}: taken in, entry {outcome.entry}")
+        write(runs_summary(outcome.runs, drafts, taken.facts))
+        say_changes(outcome)
