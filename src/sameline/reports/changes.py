@@ -36,6 +36,11 @@ def turn_words(turn: Turn, version: int) -> str:
     return f"{turn.a} and {turn.b} now {SAYS[turn.after]}{before}"
 
 
+def look_words(look: int) -> str:
+    """Which look a conclusion was; before there is anything to judge there is none."""
+    return f"look {look}" if look else "no look"
+
+
 def tally(conclusion: Conclusion) -> str:
     """How many pairs have which verdict: "3 of 10 pairs differ, 2 equivalent, 5 undecided"."""
     pairs = conclusion.answer.pairs

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 
 from sameline.records.answers import ANSWERED, Answer, Conclusion, GroupAnswer, PairAnswer
-from sameline.reports.changes import tally
+from sameline.reports.changes import look_words, tally
 from sameline.reports.subject import Subject
 from sameline.reports.text import count, interval, moment, number, p_value, percent, plain, table
 
@@ -116,7 +116,7 @@ def _overview_row(name: str, conclusion: Conclusion | None, behind: bool) -> tup
     return (
         name,
         f"v{conclusion.version}",
-        str(conclusion.look),
+        str(conclusion.look or "–"),
         str(answer.runs),
         conclusion.at[:10],
         late + said,
@@ -137,7 +137,7 @@ def _head(conclusion: Conclusion, subject: Subject) -> list[str]:
         f"{conclusion.name}: {about}",
         f"  {how} ({units}); {margin}",
         f"  {LOOKS_WORDS[revision.looks].format(rate=percent(revision.alpha), units=revision.final_units)}",
-        f"  version {conclusion.version}, look {conclusion.look}, on {data}; {recorded}",
+        f"  version {conclusion.version}, {look_words(conclusion.look)}, on {data}; {recorded}",
     ]
     if subject.method:
         lines.insert(1, f"  measured by {subject.method}")

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 from sameline.conclusions.recompute import CHECKS, Verification
 from sameline.records.answers import ANSWERED, Conclusion
 from sameline.records.trail import TrailEntry
-from sameline.reports.changes import tally, turn_words
+from sameline.reports.changes import look_words, tally, turn_words
 from sameline.reports.text import count, listed, moment, p_value, table
 
 _TABLE_WORDS = {
@@ -24,7 +24,7 @@ def history_text(versions: Sequence[Conclusion]) -> list[str]:
     for c in versions:
         said = tally(c) if c.answer.state == ANSWERED else f"not computed: {c.answer.reason}"
         causes = f"after {'entry' if len(c.causes) == 1 else 'entries'} {listed([str(n) for n in c.causes])}"
-        lines.append(f"v{c.version}, look {c.look}: {moment(c.at)}, {c.person}, entry {c.entry} ({causes})")
+        lines.append(f"v{c.version}, {look_words(c.look)}: {moment(c.at)}, {c.person}, entry {c.entry} ({causes})")
         lines.append(f"    {said}")
         lines += [f"    {turn_words(turn, c.version)}, because of {turn.because}" for turn in c.turns]
         lines += _evidence(c)
