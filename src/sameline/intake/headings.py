@@ -15,6 +15,7 @@ from typing import Any
 from sameline.errors import CallError
 from sameline.intake.dates import DateOrder
 from sameline.intake.figures import DecimalSign
+from sameline.records.moments import read_zone
 
 KEY_FIELDS = ("batch", "characteristic", "tested_at", "analyst", "instrument", "session")
 """Rows that agree in these are one run."""
@@ -113,6 +114,8 @@ class HeadingMap:
                 raise CallError(f"the map {self.name!r} names an unknown field {field!r}", advice=", ".join(FIELDS))
             if field not in ("value", "ignore") and fields.count(field) > 1:
                 raise CallError(f"the map {self.name!r} says twice which column is {field!r}")
+        if self.zone is not None:
+            read_zone(self.zone)
         missing = self.missing()
         if missing:
             raise CallError(f"the map {self.name!r} does not say where to find: {', '.join(missing)}")
