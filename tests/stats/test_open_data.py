@@ -129,3 +129,9 @@ def test_two_one_sided_tests_are_the_worse_of_two_t_tests(columns: tuple[pd.Seri
         below = scipy.stats.t.cdf((pair.difference - margin) / pair.standard_error, pair.df)
         assert pair.p_value == pytest.approx(max(above, below), rel=1e-9)
         assert pair.equivalent == (pair.p_value < 0.05)
+
+
+def test_the_overall_test_is_the_one_with_the_procedure_s_assumptions(columns: tuple[pd.Series, pd.Series]):
+    for procedure, peer in (("tukey-kramer", anova), ("games-howell", welch_anova), ("dunn", kruskal_wallis)):
+        overall, want = compare_pairs(*columns, procedure=procedure).overall, peer(*columns)
+        assert (overall.statistic, overall.p_value) == (want.statistic, want.p_value)

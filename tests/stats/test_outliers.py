@@ -4,7 +4,14 @@ import numpy as np
 import pytest
 import scipy.stats
 
-from sameline.stats import cochran_critical, cochran_test, esd_test, grubbs_test, mandel_statistics
+from sameline.stats import (
+    cochran_critical,
+    cochran_test,
+    esd_test,
+    grubbs_test,
+    mandel_statistics,
+    screen_outliers,
+)
 
 URANIUM = [199.31, 199.53, 200.19, 200.82, 201.92, 201.95, 202.18, 245.57]
 
@@ -86,3 +93,22 @@ def test_mandel_names_the_groups_beyond():
     assert got.k_beyond == ("F",)
     assert sum(got.h) == pytest.approx(0, abs=1e-12)
     assert np.mean(np.square(got.k)) == pytest.approx(1)
+
+
+def test_screening_names_suspects_by_their_row_and_says_what_it_could_not_test():
+    values = [10.0, 10.1, 9.9, 10.05, 14.0, 10.2, 10.1, 10.0, 10.15, 10.05, 9.0, 9.0]
+    labels = list("AAAAABBBBBCC")
+    got = screen_outliers(values, labels)
+    grubbs = [flag for flag in got.flags if flag.test == "grubbs"]
+    assert [(flag.group, flag.row, flag.value) for flag in grubbs] == [("A", 4, 14.0)]
+    assert [flag.group for flag in got.flags if flag.test == "cochran"] == ["A"]
+    assert set(got.not_estimable) == {"grubbs in 'C'", "mandel"}
+
+
+def test_screening_gives_mandel_both_ways():
+    rng = np.random.default_rng(3)
+    values = rng.normal(10, 0.1, (8, 4)).round(3)
+    values[2] += 2.0
+    values[5] = 10 + 10 * (values[5] - 10)
+    got = screen_outliers(values.ravel(), np.repeat(list("ABCDEFGH"), 4))
+    assert {(flag.test, flag.group) for flag in got.flags} >= {("mandel-h", "C"), ("mandel-k", "F"), ("cochran", "F")}

@@ -22,11 +22,14 @@ if TYPE_CHECKING:
     from sameline.stats.levene import levene_test
     from sameline.stats.lines import Display
     from sameline.stats.mandel import Mandel, mandel_critical, mandel_statistics
-    from sameline.stats.nested import NestedFit, fit_nested
+    from sameline.stats.nested import KnownSpread, NestedAnova, NestedFit, fit_nested, known_spread, nested_anova
+    from sameline.stats.overall import OverallTest
     from sameline.stats.pairs import compare_pairs
     from sameline.stats.pairs_result import Pair, PairsResult
     from sameline.stats.procedures import PROCEDURES, Procedure
+    from sameline.stats.screening import Flag, Screening, screen_outliers
     from sameline.stats.shapiro import shapiro_test
+    from sameline.stats.sizes import Design, Size, detectable_differences, power_curve, size_curve, size_for
     from sameline.stats.studentized_range import (
         studentized_range_cdf,
         studentized_range_isf,
@@ -43,35 +46,49 @@ __all__ = [
     "Anova",
     "Caution",
     "Cochran",
+    "Design",
     "DiagnosticTest",
     "Display",
     "Equivalence",
     "Esd",
+    "Flag",
     "GroupSummary",
     "Grubbs",
+    "KnownSpread",
     "KruskalWallis",
     "Mandel",
+    "NestedAnova",
     "NestedFit",
+    "OverallTest",
     "Pair",
     "PairsResult",
     "Procedure",
+    "Screening",
+    "Size",
     "WelchAnova",
     "anova",
     "bartlett_test",
     "cochran_critical",
     "cochran_test",
     "compare_pairs",
+    "detectable_differences",
     "dunnett_isf",
     "dunnett_sf",
     "equivalent_pairs",
     "esd_test",
     "fit_nested",
     "grubbs_test",
+    "known_spread",
     "kruskal_wallis",
     "levene_test",
     "mandel_critical",
     "mandel_statistics",
+    "nested_anova",
+    "power_curve",
+    "screen_outliers",
     "shapiro_test",
+    "size_curve",
+    "size_for",
     "studentized_range_cdf",
     "studentized_range_isf",
     "studentized_range_ppf",
@@ -81,59 +98,27 @@ __all__ = [
 ]
 
 _HOME = {
-    "analysis_of_variance": (
-        "Anova",
-        "anova",
-    ),
+    "analysis_of_variance": ("Anova", "anova"),
     "bartlett": ("bartlett_test",),
     "cautions": ("Caution",),
-    "cochran": (
-        "Cochran",
-        "cochran_critical",
-        "cochran_test",
-    ),
+    "cochran": ("Cochran", "cochran_critical", "cochran_test"),
     "diagnostic_test": ("DiagnosticTest",),
-    "dunnett_distribution": (
-        "dunnett_isf",
-        "dunnett_sf",
-    ),
-    "equivalence": (
-        "Equivalence",
-        "equivalent_pairs",
-    ),
-    "esd": (
-        "Esd",
-        "esd_test",
-    ),
-    "grubbs": (
-        "Grubbs",
-        "grubbs_test",
-    ),
-    "kruskal": (
-        "KruskalWallis",
-        "kruskal_wallis",
-    ),
+    "dunnett_distribution": ("dunnett_isf", "dunnett_sf"),
+    "equivalence": ("Equivalence", "equivalent_pairs"),
+    "esd": ("Esd", "esd_test"),
+    "grubbs": ("Grubbs", "grubbs_test"),
+    "kruskal": ("KruskalWallis", "kruskal_wallis"),
     "levene": ("levene_test",),
     "lines": ("Display",),
-    "mandel": (
-        "Mandel",
-        "mandel_critical",
-        "mandel_statistics",
-    ),
-    "nested": (
-        "NestedFit",
-        "fit_nested",
-    ),
+    "mandel": ("Mandel", "mandel_critical", "mandel_statistics"),
+    "nested": ("KnownSpread", "NestedAnova", "NestedFit", "fit_nested", "known_spread", "nested_anova"),
+    "overall": ("OverallTest",),
     "pairs": ("compare_pairs",),
-    "pairs_result": (
-        "Pair",
-        "PairsResult",
-    ),
-    "procedures": (
-        "PROCEDURES",
-        "Procedure",
-    ),
+    "pairs_result": ("Pair", "PairsResult"),
+    "procedures": ("PROCEDURES", "Procedure"),
+    "screening": ("Flag", "Screening", "screen_outliers"),
     "shapiro": ("shapiro_test",),
+    "sizes": ("Design", "Size", "detectable_differences", "power_curve", "size_curve", "size_for"),
     "studentized_range": (
         "studentized_range_cdf",
         "studentized_range_isf",
@@ -141,14 +126,8 @@ _HOME = {
         "studentized_range_sf",
     ),
     "summaries": ("GroupSummary",),
-    "verdicts": (
-        "VERDICTS",
-        "verdict",
-    ),
-    "welch": (
-        "WelchAnova",
-        "welch_anova",
-    ),
+    "verdicts": ("VERDICTS", "verdict"),
+    "welch": ("WelchAnova", "welch_anova"),
 }
 
 

@@ -62,8 +62,11 @@ def mandel_statistics(values: Iterable[Any], groups: Iterable[Any], *, alpha: fl
     Raises:
         StatsError: a value, label or option is refused, or the groups do not allow it (see the module).
     """
-    alpha = check_alpha(alpha)
-    samples = gather(values, groups, fewest=3)
+    return of_samples(gather(values, groups, fewest=3), alpha=check_alpha(alpha))
+
+
+def of_samples(samples: Samples, *, alpha: float) -> Mandel:
+    """The same, for samples already gathered."""
     _check(samples)
     p, n = samples.k, int(samples.n[0])
     means = samples.deviation
@@ -91,6 +94,8 @@ def mandel_critical(alpha: float, p: int, n: int) -> tuple[float, float]:
 
 
 def _check(samples: Samples) -> None:
+    if samples.k < 3:
+        raise StatsError("Mandel's h and k need at least three groups", where="groups", advice="give more groups")
     if np.unique(samples.n).size > 1 or samples.n[0] < 2:
         raise StatsError(
             "Mandel's h and k need groups of equal size, two values or more",

@@ -10,11 +10,13 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
+from sameline.errors import StatsError
 from sameline.stats import analysis_of_variance as one_way
 from sameline.stats.cautions import Caution
 from sameline.stats.columns import Bools, Columns, Question
 from sameline.stats.diagnostics import Diagnostics, diagnose
 from sameline.stats.lines import Display, control_display, lines
+from sameline.stats.overall import OverallTest, overall_test
 from sameline.stats.pair_cautions import pair_cautions
 from sameline.stats.procedures import COMMON, Procedure
 from sameline.stats.summaries import GroupSummary, summaries
@@ -149,6 +151,14 @@ class PairsResult:
         if self.method.family != COMMON:
             return None
         return one_way.of_samples(self.question.samples, alpha=self.alpha)
+
+    @cached_property
+    def overall(self) -> OverallTest | None:
+        """One test of all groups, by the assumptions of the procedure; None where it is not estimable."""
+        try:
+            return overall_test(self.question.samples, self.method.family)
+        except StatsError:
+            return None
 
     @cached_property
     def display(self) -> Display:
