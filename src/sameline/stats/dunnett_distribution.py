@@ -23,7 +23,7 @@ from scipy.special import ndtr, ndtri, stdtrit
 
 from sameline.errors import StatsError
 from sameline.stats.panels import Panels, fit_panels
-from sameline.stats.scale_mixture import KnownScaleTail, log_mixture
+from sameline.stats.scale_mixture import KnownScaleTail, log_mixture, log_mixture_and_slope
 
 if TYPE_CHECKING:
     from numpy.typing import ArrayLike, NDArray
@@ -110,7 +110,10 @@ def _log_sf(t: Array, weights: tuple[float, ...], two_sided: bool, df: float) ->
     """Return log P(max > t)."""
     out = np.zeros_like(t) if two_sided else np.full_like(t, _tail(weights, two_sided).log_tail(np.zeros(1))[0])
     moved = np.flatnonzero(t > 0.0 if two_sided else t != 0.0)
-    out[moved] = _log_sf_and_slope(t[moved], weights, two_sided, df)[0]
+    if np.isinf(df):
+        out[moved] = _tail(weights, two_sided).log_tail(t[moved])
+    else:
+        out[moved] = log_mixture(_tail(weights, two_sided), t[moved], np.full(moved.size, df))
     return out
 
 
@@ -119,7 +122,7 @@ def _log_sf_and_slope(t: Array, weights: tuple[float, ...], two_sided: bool, df:
     tail = _tail(weights, two_sided)
     if np.isinf(df):
         return tail.log_tail(t), t * _panels(weights, two_sided).slope(np.minimum(t, _END))
-    return log_mixture(tail, t, np.full_like(t, df))
+    return log_mixture_and_slope(tail, t, np.full_like(t, df))
 
 
 def _quantile(alpha: float, weights: tuple[float, ...], two_sided: bool, df: float) -> float:

@@ -58,7 +58,7 @@ def exceedance(critical: float, df: float, ncp: float, *, two_sided: bool) -> fl
     """
     tail = _ShiftedTail(ncp, two_sided)
     point = np.array([critical])
-    log_p = tail.log_tail(point) if math.isinf(df) else log_mixture(tail, point, np.array([df]))[0]
+    log_p = tail.log_tail(point) if math.isinf(df) else log_mixture(tail, point, np.array([df]))
     return min(1.0, float(np.exp(log_p[0])))
 
 

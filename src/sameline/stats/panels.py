@@ -14,7 +14,6 @@ from functools import lru_cache
 from typing import TYPE_CHECKING
 
 import numpy as np
-from numpy.polynomial.chebyshev import cheb2poly
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -64,12 +63,16 @@ class Panels:
 
     def _locate(self, x: Array) -> tuple[NDArray[np.intp], Array]:
         """Return each x's panel and its place in it, in [-1, 1]."""
-        fine_panels = round((self.turn - self.start) / self.fine)
-        place: Array = np.where(
-            x < self.turn, (x - self.start) / self.fine, fine_panels + (x - self.turn) / self.coarse
-        )
-        index = np.clip(place, 0, self.powers.shape[1] - 1).astype(np.intp)
-        return index, np.asarray(2.0 * (place - index) - 1.0, dtype=np.float64)
+        place: Array = (x - self.start) * (1.0 / self.fine)
+        if self.turn < self.end:
+            fine_panels = round((self.turn - self.start) / self.fine)
+            place = np.where(x < self.turn, place, fine_panels + (x - self.turn) / self.coarse)
+        index = place.astype(np.intp)
+        np.clip(index, 0, self.powers.shape[1] - 1, out=index)
+        place -= index
+        place *= 2.0
+        place -= 1.0
+        return index, place
 
 
 def fit_panels(
@@ -107,9 +110,10 @@ def _chebyshev(terms: int) -> tuple[Array, Array, Array]:
     to_series = np.cos(np.outer(np.arange(terms), angles)) * (2.0 / terms)
     to_series[0] *= 0.5
     # two steps, not one matrix: the high terms are small, and large entries must meet small numbers only
-    to_powers = np.zeros((terms, terms))
-    for degree in range(terms):
-        to_powers[: degree + 1, degree] = cheb2poly([0.0] * degree + [1.0])
+    to_powers = np.eye(terms)
+    for degree in range(2, terms):  # T_n = 2 x T_(n-1) - T_(n-2)
+        to_powers[1:, degree] = 2.0 * to_powers[:-1, degree - 1]
+        to_powers[:, degree] -= to_powers[:, degree - 2]
     points = np.cos(angles)
     for array in (points, to_series, to_powers):
         array.flags.writeable = False

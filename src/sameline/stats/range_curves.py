@@ -18,7 +18,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from sameline.stats.panels import Panels, fit_panels
-from sameline.stats.range_tail import log_quantile, log_sf_and_slope
+from sameline.stats.range_tail import log_quantile, log_sf
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -27,7 +27,7 @@ if TYPE_CHECKING:
 
 _TERMS = 14
 # Blocks of panels of the first curve: edges in v, and the width of a panel. Beyond the last, pair by pair.
-_EDGES = (0.0, 2.0, 4.0, 6.0, 8.0, 10.0, 12.0, 24.0, 36.0, 48.0)
+_EDGES = (0.0, 6.0, 12.0, 48.0)
 _FINE, _COARSE, _TURN = 0.5, 4.0, 12.0
 # The second curve's panels are octaves of df; beyond 2^20 pair by pair.
 _OCTAVES = 20
@@ -36,17 +36,19 @@ _OCTAVES = 20
 def log_sf_over_q(q: Array, groups: int, df: float) -> Array:
     """Return log P(Q > q) for many q > 0 and one df; shape as q."""
     if math.isinf(df):
-        return log_sf_and_slope(q, groups, np.full_like(q, df))[0]
+        return log_sf(q, groups, np.full_like(q, df))
     scale = 2.0 * math.sqrt(df)
     v = scale * np.arcsinh(q / scale)
     block = np.searchsorted(_EDGES, v, side="right") - 1
     out = np.empty_like(q)
-    for index in np.unique(block):
-        here = block == index
+    for index in range(len(_EDGES)):
+        here = np.flatnonzero(block == index)
+        if not here.size:
+            continue
         if index < len(_EDGES) - 1:
-            out[here] = _tail_block(groups, df, int(index))(v[here])
+            out[here] = _tail_block(groups, df, index)(v[here])
         else:
-            out[here] = log_sf_and_slope(q[here], groups, np.full(int(here.sum()), df))[0]
+            out[here] = log_sf(q[here], groups, np.full(here.size, df))
     return out
 
 
@@ -71,17 +73,17 @@ def _tail_block(groups: int, df: float, index: int) -> Panels:
     start, end = _EDGES[index], _EDGES[index + 1]
     width = _FINE if end <= _TURN else _COARSE
 
-    def log_sf(v: Array) -> Array:
-        return log_sf_and_slope(scale * np.sinh(v / scale), groups, np.full_like(v, df))[0]
+    def over_v(v: Array) -> Array:
+        return log_sf(scale * np.sinh(v / scale), groups, np.full_like(v, df))
 
-    return fit_panels(log_sf, (start, end, end, width, width), _TERMS)
+    return fit_panels(over_v, (start, end, end, width, width), _TERMS)
 
 
 @lru_cache(maxsize=1024)
 def _quantile_octave(alpha: float, groups: int, index: int) -> Panels:
     """Return one octave of the curve of log q over log2 df."""
 
-    def log_q(log2_df: Array) -> Array:
+    def over_log2_df(log2_df: Array) -> Array:
         return log_quantile(np.full_like(log2_df, math.log(alpha)), groups, np.exp2(log2_df))
 
-    return fit_panels(log_q, (float(index), index + 1.0, index + 1.0, 1.0, 1.0), _TERMS)
+    return fit_panels(over_log2_df, (float(index), index + 1.0, index + 1.0, 1.0, 1.0), _TERMS)

@@ -19,7 +19,7 @@ from scipy.special import gammaln, ndtr
 
 from sameline.errors import StatsError
 from sameline.stats.panels import Panels, fit_panels
-from sameline.stats.scale_mixture import STEP_IN_SIGMA, log_mixture, reach
+from sameline.stats.scale_mixture import STEP_IN_SIGMA, log_mixture_and_slope, reach
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -47,7 +47,7 @@ def log_cdf_and_slope(q: Array, groups: int, df: Array) -> tuple[Array, Array]:
     log_cdf, slope = np.empty_like(q), np.empty_like(q)
     log_cdf[known] = tail.log_tail(q[known])
     slope[known] = tail.slope(q[known])
-    log_cdf[~known], slope[~known] = log_mixture(tail, q[~known], df[~known])
+    log_cdf[~known], slope[~known] = log_mixture_and_slope(tail, q[~known], df[~known])
     return log_cdf, slope
 
 

@@ -19,7 +19,7 @@ from scipy.special import ndtr, ndtri, stdtrit
 
 from sameline.errors import StatsError
 from sameline.stats.panels import Panels, fit_panels
-from sameline.stats.scale_mixture import KnownScaleTail, log_mixture
+from sameline.stats.scale_mixture import KnownScaleTail, log_mixture, log_mixture_and_slope
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -28,12 +28,14 @@ if TYPE_CHECKING:
 
 # S(52) is about 1e-294: beyond it the tail is continued as a normal one.
 _END = 52.0
-_LAYOUT = (0.0, 12.0, _END, 0.5, 4.0)
-_TERMS = 14
+# The integral is done at the points of a few long polynomials, which are then cut into many short ones: the outer
+# integral evaluates them some ten thousand times.
+_LONG, _LONG_TERMS = (0.0, 12.0, _END, 0.5, 4.0), 14
+_SHORT, _SHORT_TERMS = (0.0, _END, _END, 0.25, 0.25), 10
 
 
-def log_sf_and_slope(q: Array, groups: int, df: Array) -> tuple[Array, Array]:
-    """Return log P(Q > q) and its derivative by log q.
+def log_sf(q: Array, groups: int, df: Array) -> Array:
+    """Return log P(Q > q).
 
     Args:
         q: shape (m,), finite and above 0.
@@ -44,11 +46,21 @@ def log_sf_and_slope(q: Array, groups: int, df: Array) -> tuple[Array, Array]:
     known = np.isinf(df)
     if not known.any():
         return log_mixture(tail, q, df)
-    log_sf, slope = np.empty_like(q), np.empty_like(q)
-    log_sf[known] = tail.log_tail(q[known])
+    out = np.empty_like(q)
+    out[known] = tail.log_tail(q[known])
+    out[~known] = log_mixture(tail, q[~known], df[~known])
+    return out
+
+
+def _log_sf_and_slope(q: Array, groups: int, df: Array) -> tuple[Array, Array]:
+    """Return log P(Q > q) and its derivative by log q; arguments as `log_sf`."""
+    tail = range_tail(groups)
+    known = np.isinf(df)
+    value, slope = np.empty_like(q), np.empty_like(q)
+    value[known] = tail.log_tail(q[known])
     slope[known] = _range_panels(groups).slope(np.minimum(q[known], _END)) * q[known]
-    log_sf[~known], slope[~known] = log_mixture(tail, q[~known], df[~known])
-    return log_sf, slope
+    value[~known], slope[~known] = log_mixture_and_slope(tail, q[~known], df[~known])
+    return value, slope
 
 
 def log_quantile(log_level: Array, groups: int, df: Array) -> Array:
@@ -70,7 +82,7 @@ def log_quantile(log_level: Array, groups: int, df: Array) -> Array:
     y: Array = np.log(np.sqrt(2.0) * np.maximum(start, 1e-3))
     active = np.arange(y.size)
     for _ in range(60):
-        value, slope = log_sf_and_slope(np.exp(y[active]), groups, df[active])
+        value, slope = _log_sf_and_slope(np.exp(y[active]), groups, df[active])
         step = (value - log_level[active]) / slope
         y[active] -= step
         # Newton's next step is of the order of this one's square
@@ -86,7 +98,7 @@ def range_tail(groups: int) -> KnownScaleTail:
     panels = _range_panels(groups)
 
     def log_tail(w: Array) -> Array:
-        if w.max() <= _END:
+        if not (w > _END).any():
             return panels(w)
         inside = np.minimum(w, _END)
         return np.asarray(panels(inside) - 0.25 * (w * w - inside * inside))
@@ -97,16 +109,31 @@ def range_tail(groups: int) -> KnownScaleTail:
 @lru_cache(maxsize=64)
 def _range_panels(groups: int) -> Panels:
     """Tabulate log S(w)."""
-    return fit_panels(lambda w: np.log(_known_scale_tail(w, groups)), _LAYOUT, _TERMS)
+    long = fit_panels(lambda w: np.log(_known_scale_tail(w, groups)), _LONG, _LONG_TERMS)
+    return fit_panels(long, _SHORT, _SHORT_TERMS)
 
 
 def _known_scale_tail(w: Array, groups: int) -> Array:
-    """Return S(w) by the trapezoid rule around z = -w/2, where smallest and largest value lie evenly about zero."""
-    step = 0.2 if groups <= 40 else 0.125 if groups <= 200 else 0.1
-    offsets = np.arange(-9.0, 7.5, step)[:, None]
-    z = offsets - 0.5 * w
+    """Return S(w) by the trapezoid rule over the smallest value z, stretch by stretch of w."""
+    out = np.empty_like(w)
+    stretch = np.floor(0.25 * w)
+    for number in np.unique(stretch):
+        members = np.flatnonzero(stretch == number)
+        out[members] = _known_scale_tail_near(w[members], groups)
+    return out
+
+
+def _known_scale_tail_near(w: Array, groups: int) -> Array:
+    """Return S(w) for like values of w, on one grid of z.
+
+    The integrand is at most φ(z) and, about -w/2, at most a multiple of exp(-(z + w/2)²): beyond the grid lies less
+    than 1e-16 of it.
+    """
+    step = 0.2 if groups <= 20 else 0.15 if groups <= 80 else 0.125 if groups <= 200 else 0.1
+    low = -max(8.8, 6.6 + 0.5 * float(w.max()))
+    z = np.arange(low, 6.6 - 0.5 * float(w.min()) + step, step)
     above = ndtr(-z)
-    missed = np.minimum(ndtr(-(z + w)) / above, 1.0 - 1e-16)
+    density = np.exp(-0.5 * z * z + (groups - 1) * np.log(above))
+    missed = np.minimum(ndtr(-(z[:, None] + w)) / above[:, None], 1.0 - 1e-16)
     exceeded = -np.expm1((groups - 1) * np.log1p(-missed))
-    integrand = np.exp(-0.5 * z * z + (groups - 1) * np.log(above)) * exceeded
-    return np.asarray(groups * step / np.sqrt(2.0 * np.pi) * integrand.sum(axis=0))
+    return np.asarray(groups * step / np.sqrt(2.0 * np.pi) * (density[:, None] * exceeded).sum(axis=0))

@@ -34,7 +34,7 @@ _DEPTH = 39.0
 # at few degrees of freedom uses up the surplus.
 STEP_IN_SIGMA = 0.5
 # Beyond this x - (e^2x - 1)/2 needs its series near zero.
-_MANY_DF = 1000.0
+_MANY_DF = 100.0
 # Nodes times pairs in one go, so that the working arrays stay in the cache.
 _BLOCK = 65_536
 
@@ -79,19 +79,28 @@ class KnownScaleTail:
         return shift - left, np.minimum(0.0, np.maximum(shift, edge)) + right, step
 
 
-def log_mixture(tail: Mixand, q: Array, df: Array) -> tuple[Array, Array]:
-    """Return the logarithm of the mixed tail at q, and its derivative by log q.
+def log_mixture(tail: Mixand, q: Array, df: Array) -> Array:
+    """Return the logarithm of the mixed tail at q.
 
     Args:
         tail: the tail at known scale.
         q: shape (m,), the statistics, not zero.
         df: shape (m,), finite, at least 1.
     """
+    return _mix(tail, q, df, with_slope=False)[0]
+
+
+def log_mixture_and_slope(tail: Mixand, q: Array, df: Array) -> tuple[Array, Array]:
+    """Return the logarithm of the mixed tail at q, and its derivative by log q; arguments as `log_mixture`."""
+    return _mix(tail, q, df, with_slope=True)
+
+
+def _mix(tail: Mixand, q: Array, df: Array, *, with_slope: bool) -> tuple[Array, Array]:
+    """Integrate class by class of node counts, so that unlike pairs are not all given the largest."""
     low, high, step = tail.window(q, df)
-    # classes of node counts, so that unlike pairs are not all given the largest
     nodes = (8 * np.ceil(((high - low) / step + 1.0) / 8.0)).astype(np.intp)
     kinds = np.where(df > _MANY_DF, -nodes, nodes)
-    log_sf, slope = np.empty_like(q), np.empty_like(q)
+    log_total, slope = np.empty_like(q), np.empty_like(q)
     for kind in np.unique(kinds):
         count, exponent = abs(int(kind)), _plain_exponent if kind > 0 else _close_exponent
         members = np.flatnonzero(kinds == kind)
@@ -100,35 +109,32 @@ def log_mixture(tail: Mixand, q: Array, df: Array) -> tuple[Array, Array]:
             part = members[begin : begin + size]
             step = (high[part] - low[part]) / (count - 1)
             x = low[part] + step * np.arange(count)[:, None]
-            log_sf[part], slope[part] = _trapezoid(tail, q[part], df[part], x, df[part] * exponent(x))
-            log_sf[part] += np.log(step) + _log_constant(df[part])
-    return log_sf, slope
+            scale = np.exp(x)
+            weights = tail.log_tail(q[part] * scale) + df[part] * exponent(x, scale)
+            top = weights.max(axis=0)
+            weights -= top
+            np.exp(weights, out=weights)
+            total = weights.sum(axis=0)
+            log_total[part] = top + np.log(total * step) + _log_constant(df[part])
+            if with_slope:
+                # by parts: d/dlog q ∫ g S(q e^x) = -∫ g' S = ∫ df (e^2x - 1) g S
+                slope[part] = df[part] * (weights * (scale * scale - 1.0)).sum(axis=0) / total
+    return log_total, slope
 
 
-def _trapezoid(tail: Mixand, q: Array, df: Array, x: Array, log_g: Array) -> tuple[Array, Array]:
-    """Return the logarithm of the integrand's sum over the nodes (axis 0), and the sum's slope by log q."""
-    exponent = log_g + tail.log_tail(q * np.exp(x))
-    top = exponent.max(axis=0)
-    weights = np.exp(exponent - top)
-    total = weights.sum(axis=0)
-    # by parts: d/dlog q ∫ g S(q e^x) = -∫ g' S = ∫ df (e^2x - 1) g S
-    slope = df * (weights * np.expm1(2.0 * x)).sum(axis=0) / total
-    return top + np.log(total), slope
+def _plain_exponent(x: Array, scale: Array) -> Array:
+    """Return x - (e^2x - 1)/2, given e^x."""
+    return np.asarray(x - 0.5 * (scale * scale - 1.0))
 
 
-def _plain_exponent(x: Array) -> Array:
-    """Return x - (e^2x - 1)/2."""
-    return np.asarray(x - 0.5 * np.expm1(2.0 * x))
-
-
-def _close_exponent(x: Array) -> Array:
+def _close_exponent(x: Array, scale: Array) -> Array:
     """Return the same without the cancellation near zero, which many degrees of freedom would magnify."""
     near = np.abs(x) < 0.25
     small = np.where(near, x, 0.0)
     series = np.ones_like(x)
     for power in range(14, 2, -1):
         series = 1.0 + series * (2.0 * small) / power
-    return np.where(near, -small * small * series, _plain_exponent(x))
+    return np.where(near, -small * small * series, _plain_exponent(x, scale))
 
 
 def _log_constant(df: Array) -> Array:
@@ -147,7 +153,7 @@ def reach(df: Array) -> tuple[Array, Array]:
     depth = _DEPTH / df
     left = np.minimum(depth + 0.5, depth + np.sqrt(depth))
     right = np.minimum(np.sqrt(depth), 0.5 * np.log1p(2.0 * depth) + 1.0)
-    for _ in range(8):
+    for _ in range(3):  # from outside: always far enough, and near enough after three steps
         left = left - (left + 0.5 * np.expm1(-2.0 * left) - depth) / -np.expm1(-2.0 * left)
         right = right - (0.5 * np.expm1(2.0 * right) - right - depth) / np.expm1(2.0 * right)
     return left, right

@@ -9,6 +9,7 @@ Nothing here is random, and no value depends on what else is computed in the sam
 
 from __future__ import annotations
 
+from functools import lru_cache
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -16,7 +17,7 @@ import numpy as np
 from sameline.errors import StatsError
 from sameline.stats.range_curves import log_sf_over_q, quantiles_over_df
 from sameline.stats.range_lower_tail import log_cdf_and_slope, log_lower_quantile
-from sameline.stats.range_tail import log_quantile, log_sf_and_slope
+from sameline.stats.range_tail import log_quantile, log_sf
 
 if TYPE_CHECKING:
     from numpy.typing import ArrayLike, NDArray
@@ -117,16 +118,16 @@ def _log_sf(q: Array, groups: int, df: Array) -> Array:
     if df.size == 1:
         out[inside] = log_sf_over_q(positive, groups, float(df[0]))
     else:
-        out[inside] = log_sf_and_slope(positive, groups, df[inside])[0]
+        out[inside] = log_sf(positive, groups, df[inside])
     out[np.isposinf(q)] = -np.inf
     return np.minimum(out, 0.0)
 
 
 def _cdf(q: Array, groups: int, df: Array) -> Array:
     """Return P(Q <= q), from whichever tail is the smaller."""
-    log_sf = _log_sf(q, groups, df)
-    out = -np.expm1(log_sf)
-    low = np.flatnonzero((q > 0.0) & (log_sf > _LOG_HALF))
+    above = _log_sf(q, groups, df)
+    out = -np.expm1(above)
+    low = np.flatnonzero((q > 0.0) & (above > _LOG_HALF))
     if low.size:
         out[low] = np.exp(
             log_cdf_and_slope(np.maximum(q[low], _SMALLEST_Q), groups, np.broadcast_to(df, q.shape)[low])[0]
@@ -138,7 +139,15 @@ def _quantile(alpha: Array, groups: int, df: Array) -> Array:
     """Return the q with P(Q > q) = alpha."""
     if alpha.size > 1 and df.size > 1 and (alpha == alpha[0]).all():
         return quantiles_over_df(float(alpha[0]), groups, df)
+    if alpha.size == 1 and df.size == 1:
+        return np.array([_one_quantile(float(alpha[0]), groups, float(df[0]))])
     return np.asarray(np.exp(log_quantile(np.log(alpha), groups, np.broadcast_to(df, alpha.shape))))
+
+
+@lru_cache(maxsize=256)
+def _one_quantile(alpha: float, groups: int, df: float) -> float:
+    """Return one quantile, kept: a comparison looked at again asks for the same."""
+    return float(np.exp(log_quantile(np.array([np.log(alpha)]), groups, np.array([df])))[0])
 
 
 def _lower_quantile(p: Array, groups: int, df: Array) -> Array:
