@@ -69,6 +69,10 @@ def compare(
         typer.Option(help="With planned or single looks: the final number of units, of all groups together."),
     ] = None,
     spending: Annotated[str | None, typer.Option(help="With planned looks: obrien-fleming or pocock.")] = None,
+    known_spread: Annotated[
+        bool,
+        typer.Option("--known-spread", help="Where batches have one run each, use other batches' run-to-run spread."),
+    ] = False,
     reason: MaybeReasonOption = None,
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
@@ -99,6 +103,7 @@ def compare(
                 looks=looks,
                 final_units=units,
                 spending=spending,
+                known_spread=known_spread,
             ),
             model=model,
             procedure=procedure,

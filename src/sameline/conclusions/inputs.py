@@ -3,14 +3,20 @@
 from __future__ import annotations
 
 import hashlib
-from dataclasses import dataclass
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+from sqlalchemy import select
 
 from sameline.ledger.canonical import canonical
+from sameline.records import tables as t
 from sameline.records.comparisons import Revision, effective_margin
 from sameline.records.concluded import codes_of
 from sameline.records.runs import Measurement, read_measurements
 from sameline.records.scope import batches_in_scope
 from sameline.records.store import Reading
+
+RECENT_RUNS = 200
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,12 +52,15 @@ class Inputs:
         values: in order of run and replicate; those set aside are marked.
         margin: that holds, or None.
         control: code of the control group, or None.
+        elsewhere: values of the last runs of this characteristic on other batches, by batch code and run, where the
+            comparison may use their run-to-run spread; else empty.
     """
 
     groups: tuple[tuple[int, str], ...]
     values: tuple[Value, ...]
     margin: float | None
     control: str | None
+    elsewhere: Mapping[tuple[str, int], list[float]] = field(default_factory=dict)
 
     @property
     def kept(self) -> tuple[Value, ...]:
@@ -94,7 +103,30 @@ def gather(reading: Reading, revision: Revision) -> Inputs:
         values=values,
         margin=effective_margin(reading, revision),
         control=control,
+        elsewhere=_elsewhere(reading, revision, scope) if revision.known_spread else {},
     )
+
+
+def recent_runs(reading: Reading, characteristic: int) -> dict[tuple[str, int], list[float]]:
+    """The values of the last `RECENT_RUNS` runs of a characteristic, by batch code and run, without what is set aside.
+
+    So few are taken that it costs the same in a store of any age.
+    """
+    run = t.run
+    query = select(run.c.id).where(run.c.characteristic == characteristic, run.c.entry <= reading.position)
+    last = reading.connection.execute(query.order_by(run.c.id.desc()).limit(RECENT_RUNS)).scalars().all()
+    kept = [m for m in read_measurements(reading, runs=last) if m.excluded is None and m.qualifier is None]
+    code = codes_of(reading.connection, "batch", {m.batch for m in kept})
+    found: dict[tuple[str, int], list[float]] = {}
+    for m in kept:
+        found.setdefault((code[m.batch], m.run), []).append(m.value)
+    return found
+
+
+def _elsewhere(reading: Reading, revision: Revision, scope: dict[int, int]) -> dict[tuple[str, int], list[float]]:
+    own = set(codes_of(reading.connection, "batch", scope).values())
+    found = recent_runs(reading, revision.characteristic)
+    return {key: values for key, values in found.items() if key[0] not in own}
 
 
 def _with_values(scope: dict[int, int], found: list[Measurement]) -> tuple[int, ...]:

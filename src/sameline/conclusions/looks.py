@@ -62,7 +62,9 @@ def over_all_looks(looking: Looking) -> Judged:
         return _single(looking)
     if revision.looks == "planned":
         return _planned(looking)
-    if revision.model == "pooled" or (revision.model == "nested" and revision.grouping == "batch"):
+    if revision.model == "pooled" or (
+        revision.model == "nested" and revision.grouping == "batch" and not revision.known_spread
+    ):
         return _open(looking)
     return _union(looking)
 

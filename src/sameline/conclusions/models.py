@@ -16,6 +16,7 @@ from typing import TYPE_CHECKING
 from sameline import __version__
 from sameline.conclusions.judged import GroupFigures, Judged, finite, sd
 from sameline.conclusions.looks import Looking, over_all_looks
+from sameline.errors import StatsError
 from sameline.records.answers import CautionAnswer, ComponentAnswer, GlobalTest, PairAnswer
 
 if TYPE_CHECKING:
@@ -24,6 +25,7 @@ if TYPE_CHECKING:
     from sameline.conclusions.inputs import Inputs, Value
     from sameline.conclusions.past import Past
     from sameline.records.comparisons import Revision
+    from sameline.stats.nested.known_spread import KnownSpread
     from sameline.stats.nested.pairs import NestedPairs
     from sameline.stats.pairs_result import PairsResult
 
@@ -108,10 +110,32 @@ def _units(revision: Revision, inputs: Inputs) -> Judged:
         display=result.display.kind,
         pairs=_pairs(result),
         engine=engine(),
-        cautions=tuple(CautionAnswer(c.code, c.text) for c in result.cautions),
+        cautions=(*_wrong_unit(revision, inputs), *(CautionAnswer(c.code, c.text) for c in result.cautions)),
         test=_test(result),
         critical_value=result.critical_value,
     )
+
+
+def _wrong_unit(revision: Revision, inputs: Inputs) -> Iterator[CautionAnswer]:
+    """What it means to count as evidence what shares an error with its neighbours, measured on these data."""
+    from sameline.stats.nested.fit import fit_nested
+
+    if revision.unit == "run" and revision.grouping != "batch":
+        text = (
+            f"runs of one batch share its own deviation: they are not independent evidence about a {revision.grouping}"
+        )
+        yield CautionAnswer("runs as units", text)
+    if revision.unit != "replicate":
+        return
+    values = _in_order(inputs)
+    batches = None if revision.grouping == "batch" else [v.batch for v in values]
+    try:
+        fit = fit_nested([v.value for v in values], [v.group for v in values], batches, [v.run for v in values])
+        found = fit.replicates_as_units(revision.alpha)
+    except StatsError:
+        return  # where runs cannot be told apart there is nothing to measure; the fit's own refusal is no answer here
+    if found is not None:
+        yield CautionAnswer("replicates as units", found.text)
 
 
 def _pairs(result: PairsResult | NestedPairs) -> tuple[PairAnswer, ...]:
@@ -156,6 +180,7 @@ def _nested(revision: Revision, inputs: Inputs) -> Judged:
         [v.group for v in values],
         None if revision.grouping == "batch" else [v.batch for v in values],
         [v.run for v in values],
+        known=_known(inputs),
     )
     means = fit.means(revision.alpha)
     pairs = fit.pairs(
@@ -176,9 +201,29 @@ def _nested(revision: Revision, inputs: Inputs) -> Judged:
         display=pairs.display.kind,
         pairs=_pairs(pairs),
         engine=engine(),
-        components=tuple(ComponentAnswer(level, v, None, None) for level, v in fit.components.items()),
+        components=tuple(
+            ComponentAnswer(c.name, c.variance, _square(c.lower), _square(c.upper)) for c in fit.spread().levels
+        ),
         cautions=tuple(CautionAnswer(c.code, c.text) for c in fit.cautions),
     )
+
+
+def _known(inputs: Inputs) -> KnownSpread | None:
+    """The run-to-run spread of other batches, where the comparison may use it and there is one."""
+    from sameline.stats.nested.known_spread import known_spread
+
+    rows = [(value, batch, run) for (batch, run), values in inputs.elsewhere.items() for value in values]
+    if not rows:
+        return None
+    values, batches, runs = zip(*rows, strict=True)
+    try:
+        return known_spread(values, batches, runs, source="other batches of this characteristic")
+    except StatsError:
+        return None  # no other batch has two runs; the fit then says that the spread cannot be seen
+
+
+def _square(deviation: float | None) -> float | None:
+    return None if deviation is None else deviation * deviation
 
 
 def _unit_spread(units: Iterable[Unit]) -> dict[str, tuple[int, float | None]]:

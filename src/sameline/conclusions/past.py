@@ -11,12 +11,11 @@ from dataclasses import dataclass, replace
 
 from sqlalchemy import func, select
 
-from sameline.conclusions.inputs import Inputs, gather
+from sameline.conclusions.inputs import Inputs, gather, recent_runs
 from sameline.records import concluded
 from sameline.records import tables as t
 from sameline.records.answers import ANSWERED, Conclusion
 from sameline.records.comparisons import Revision, read_revision
-from sameline.records.runs import read_measurements
 from sameline.records.store import Reading
 
 
@@ -41,8 +40,7 @@ class Past:
 
 NO_PAST = Past()
 
-RECENT_RUNS = 200
-FEWEST_DF = 3
+FEWEST_DF = 3  # with fewer, a spread known beforehand says too little to tune by
 
 
 def past_of(reading: Reading, revision: Revision, inputs: Inputs) -> Past:
@@ -64,20 +62,12 @@ def known_unit_sd(reading: Reading, revision: Revision) -> float | None:
     """The spread of run means within batches of this characteristic, from the runs recorded before the statement.
 
     It tunes what an open comparison looks hardest for, so it must not come from the data compared: only runs that were
-    there when the comparison was stated are taken, at most the last `RECENT_RUNS` of them.
+    there when the comparison was stated are taken.
     """
     stated = replace(reading, position=revision.entry, latest=False)
-    recent = select(t.run.c.id).where(
-        t.run.c.characteristic == revision.characteristic, t.run.c.entry <= revision.entry
-    )
-    runs = reading.connection.execute(recent.order_by(t.run.c.id.desc()).limit(RECENT_RUNS)).scalars().all()
-    values = [m for m in read_measurements(stated, runs=runs) if m.excluded is None and m.qualifier is None]
-    by_run: dict[tuple[int, int], list[float]] = {}
-    for m in values:
-        by_run.setdefault((m.batch, m.run), []).append(m.value)
-    by_batch: dict[int, list[float]] = {}
-    for (batch, _), own in by_run.items():
-        by_batch.setdefault(batch, []).append(math.fsum(own) / len(own))
+    by_batch: dict[str, list[float]] = {}
+    for (batch, _), values in recent_runs(stated, revision.characteristic).items():
+        by_batch.setdefault(batch, []).append(math.fsum(values) / len(values))
     df = sum(len(means) - 1 for means in by_batch.values())
     if df < FEWEST_DF:
         return None

@@ -68,6 +68,11 @@ def check(statement: Statement) -> None:
     if statement.unit == "batch" and statement.grouping == "batch":
         raise CallError("batches that are the groups cannot be the units too", advice="use --unit run")
 
+    if statement.known_spread and (statement.model != "nested" or statement.looks == "planned"):
+        raise CallError(
+            "a known spread goes with the nested model and open or single looks", advice="leave one of them out"
+        )
+
 
 def _check_groups(statement: Statement) -> None:
     if len(set(statement.groups)) != len(statement.groups):

@@ -15,12 +15,15 @@ from sameline.records.store import Reading, Store
 if TYPE_CHECKING:
     import pandas as pd
 
+    from sameline.conclusions.planning import Sizes
     from sameline.conclusions.recompute import Verification
     from sameline.records.answers import Answer, Conclusion
     from sameline.records.drafts import DraftMeasurement, Register
     from sameline.records.runs import Measurement
     from sameline.records.trail import TrailEntry
     from sameline.reports.subject import Subject
+    from sameline.stats.nested.fit import NestedFit
+    from sameline.stats.plans import Costs
 
 
 class Reads:
@@ -102,6 +105,27 @@ class Reads:
 
         with self.reading() as reading:
             return naive_answer(reading, conclusion, unit)
+
+    def spread(self, characteristic: str, *, as_of: int | str | None = None, **only: str | None) -> NestedFit:
+        """The variance components of a characteristic; the filters are those of `conclusions.spread.fit_spread`."""
+        from sameline.conclusions.spread import fit_spread
+
+        with self.reading(as_of) as reading:
+            zone = runs.laboratory_zone(reading.connection)
+            moments = {
+                w: read_moment(m, zone) for w in ("tested_from", "tested_before") if (m := only.get(w)) is not None
+            }
+            return fit_spread(reading, characteristic, **{**only, **moments})
+
+    def sizes(
+        self, name: str, *, power: float = 0.8, difference: float | None = None, costs: Costs | None = None
+    ) -> Sizes:
+        """How much more to test for a comparison: plans, what settles its undecided pairs, the price of looking."""
+        from sameline.conclusions.planning import sizes_of
+
+        conclusion = self.conclusion(name)
+        with self.reading() as reading:
+            return sizes_of(reading, conclusion, power=power, difference=difference, costs=costs)
 
     def is_behind(self, conclusion: Conclusion) -> bool:
         """Whether the comparison of a conclusion is behind the records."""

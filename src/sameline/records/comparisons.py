@@ -38,6 +38,7 @@ class Statement:
         looks: "open", "planned" or "single".
         final_units: the amount of data planned for, in units a group, with "planned" and "single".
         spending: how a plan spends its error rate over looks.
+        known_spread: whether the run-to-run spread of other batches may be used where these have one run each.
     """
 
     name: str
@@ -57,6 +58,7 @@ class Statement:
     looks: str = "open"
     final_units: int | None = None
     spending: str | None = None
+    known_spread: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -92,6 +94,7 @@ class Revision:
     looks: str
     final_units: int | None
     spending: str | None
+    known_spread: bool
 
 
 def state(act: Act, statement: Statement) -> int:
@@ -129,6 +132,7 @@ def state(act: Act, statement: Statement) -> int:
         looks=statement.looks,
         final_units=statement.final_units,
         spending=statement.spending,
+        known_spread=1 if statement.known_spread else None,
         **{f"control_{statement.grouping}": control},
     )
     for place, code in enumerate(statement.groups, 1):
@@ -175,8 +179,9 @@ def _revision(connection: Connection, row: Any) -> Revision:  # noqa: ANN401 - a
         group = t.comparison_group
         query = select(group.c[row["grouping"]]).where(group.c.revision == row["id"]).order_by(group.c.place)
         listed = tuple(connection.execute(query).scalars())
-    own = {f: row[f] for f in Revision.__dataclass_fields__ if f not in {"groups", "control"}}
-    return Revision(**own, groups=listed, control=row[f"control_{row['grouping']}"])
+    own = {f: row[f] for f in Revision.__dataclass_fields__ if f not in {"groups", "control", "known_spread"}}
+    control = row[f"control_{row['grouping']}"]
+    return Revision(**own, groups=listed, control=control, known_spread=bool(row["known_spread"]))
 
 
 def effective_margin(reading: Reading, revision: Revision) -> float | None:

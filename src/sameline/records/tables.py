@@ -260,9 +260,10 @@ comparison_revision = _recorded(
     Column("looks", Text, nullable=False),
     Column("final_units", Integer),
     Column("spending", Text),
+    Column("known_spread", Integer),  # 1 where the run-to-run spread of other batches may be used
     UniqueConstraint("comparison", "revision"),
     CheckConstraint("grouping IN ('batch', 'material', 'supplier')", name="grouping"),
-    CheckConstraint("listed IN (0, 1)", name="truth"),
+    CheckConstraint("listed IN (0, 1) AND known_spread IN (0, 1)", name="truth"),
     CheckConstraint("alpha > 0 AND alpha < 1", name="alpha"),
 )
 
