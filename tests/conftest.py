@@ -25,6 +25,7 @@ def _beside(name: str) -> ModuleType:
 # so that tests can import them by their names
 laboratory = _beside("laboratory")
 servers = _beside("servers")
+attacker = _beside("attacker")
 
 
 @pytest.fixture(scope="session")
@@ -79,9 +80,12 @@ def sqlite_store(tmp_path: Path, sqlite_template: Path):
 
 
 @pytest.fixture
+def postgresql_store(postgresql: servers.PostgreSQL, postgresql_template: str):
+    """The URL of a database of its own that holds the small laboratory."""
+    return postgresql.new(postgresql_template)
+
+
+@pytest.fixture
 def store(kind: str, request: pytest.FixtureRequest):
     """The path or URL of a store of its own that holds the small laboratory, on each kind of database."""
-    if kind == "sqlite":
-        return request.getfixturevalue("sqlite_store")
-    template = request.getfixturevalue("postgresql_template")
-    return request.getfixturevalue("postgresql").new(template)
+    return request.getfixturevalue(f"{kind}_store")
