@@ -94,7 +94,11 @@ def _fitting(rows: list[Row], maps: Sequence[HeadingMap]) -> list[tuple[HeadingM
 
 def report_missing(table: Table, book: FindingBook) -> None:
     """Say which headings are missing, and what stands in their place."""
-    rows = head(table)
+    try:
+        rows = head(table)
+    except UnreadableError as error:
+        book.add(error.row, None, None, error.problem, error.suggestion)
+        return
     if not rows:
         book.add(None, None, None, "the table is empty", "write headings in the first row and the results below")
         return

@@ -21,8 +21,9 @@ _UNIT = re.compile(
     r"|\s(?:in|/)\s+(?P<behind>\S+(?: [A-D])?))\s*$"
 )
 _NUMBER = re.compile(r"^(?P<name>.*?)[\s_#.\-]*(?P<number>\d{1,3})$")
-_REPLICATE_WORDS = frozenset({"", "r", "x", "m", "n", "rep", "replicate", "specimen", "value", "reading", "test", "sample",
-                              "probe", "wert", "no", "nr", "result", "measurement", "run", "piece"})  # fmt: skip
+_REPLICATE_WORDS = frozenset(
+    re.findall(r"\w+", "r x m n rep replicate specimen value reading test sample probe wert no nr result run piece")
+) | {""}
 
 
 @dataclass(frozen=True, slots=True)

@@ -11,7 +11,6 @@ from sameline.intake.files import Intake
 from sameline.intake.findings import Finding
 from sameline.intake.headings import fold
 from sameline.intake.rawfiles import SIZE_LIMIT, RawFile
-from sameline.intake.tables import UnreadableError
 
 if TYPE_CHECKING:
     from openpyxl.worksheet.worksheet import Worksheet
@@ -33,18 +32,28 @@ def marked_copy(raw: RawFile, intake: Intake) -> bytes:
     Raises:
         CallError: it is no XLSX workbook, or too large to be marked.
     """
-    import openpyxl
-
-    from sameline.intake.workbooks import sheet_tables
-
     try:
-        if sum(table.size for table in sheet_tables(raw, SIZE_LIMIT)) > _MARKED_CELLS:
-            raise CallError("the workbook is too large to be marked", where=raw.name, advice="see the list of findings")
-        book = openpyxl.load_workbook(io.BytesIO(raw.data))
-    except (UnreadableError, KeyError, ValueError, TypeError, OSError, AttributeError) as error:
+        _refuse_large(raw)
+        return _marked(raw, intake)
+    except CallError:
+        raise
+    except Exception as error:  # the library raises whatever its parsers and its types raise
         raise CallError(
             "only an XLSX workbook can be marked", where=raw.name, advice="see the list of findings"
         ) from error
+
+
+def _refuse_large(raw: RawFile) -> None:
+    from sameline.intake.workbooks import sheet_tables
+
+    if sum(table.size for table in sheet_tables(raw, SIZE_LIMIT)) > _MARKED_CELLS:
+        raise CallError("the workbook is too large to be marked", where=raw.name, advice="see the list of findings")
+
+
+def _marked(raw: RawFile, intake: Intake) -> bytes:
+    import openpyxl
+
+    book = openpyxl.load_workbook(io.BytesIO(raw.data))
     findings = [finding for finding in intake.findings if finding.file == raw.name]
     rows = {part.sheet: part.heading_row for part in intake.parts if part.file == raw.name}
     for finding in findings[:_MARKS]:
