@@ -67,7 +67,11 @@ def test_order_of_rows_and_groups_does_not_matter_to_the_last_bit(procedure: Pro
     second = compared(shuffled, procedure, control="A", margin=1.0)
     assert figures(first) == figures(second)
     assert {group.label: group for group in first.groups} == {group.label: group for group in second.groups}
-    assert {frozenset(line) for line in first.lines} == {frozenset(line) for line in second.lines}
+    assert (first.lines, first.display.letters, first.display.kind) == (
+        second.lines,
+        second.display.letters,
+        second.display.kind,
+    )
     assert [caution.code for caution in first.cautions] == [caution.code for caution in second.cautions]
     assert (first.anova and first.anova.F) == (second.anova and second.anova.F)
 
@@ -112,7 +116,8 @@ def test_other_labels_carry_through(procedure: Procedure, data: Rows):
     names = {"A": "zeta", "B": "lot 7", "C": "Ä", "D": "-", "E": "0"}
     before, after = compared(data, procedure), compared([(v, names[label]) for v, label in data], procedure)
     assert [(names[p.a], names[p.b], *p[2:]) for p in before.pairs] == [tuple(p) for p in after.pairs]
-    assert [[names[label] for label in line] for line in before.lines] == after.lines
+    if len(set(before.question.samples.mean.tolist())) == len(before.labels):  # equal means go by label
+        assert [[names[label] for label in line] for line in before.lines] == after.lines
 
 
 @BY_NAME

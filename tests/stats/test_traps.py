@@ -64,6 +64,15 @@ def test_a_decimal_repeated_is_without_spread_whatever_its_double():
         compare_pairs([0.1] * 3 + [0.7] * 3, ["A"] * 3 + ["B"] * 3)
 
 
+def test_a_spread_that_is_only_rounding_carries_a_caution():
+    # Means computed from 10.1, 10.2, 10.3 and from 10.2 thrice may differ in their last bit and in nothing else.
+    values = [10.2, 10.200000000000001, 10.2, 9.2, 9.200000000000001, 9.2]
+    result = compare_pairs(values, list("AAABBB"))
+    assert "spread-of-rounding" in {caution.code for caution in result.cautions}
+    plain = compare_pairs([1.0, 1.1, 2.0, 2.1], list("AABB"))
+    assert "spread-of-rounding" not in {caution.code for caution in plain.cautions}
+
+
 def test_one_group_without_spread_makes_welch_and_bartlett_say_so():
     values = [5.0] * 4 + VALUES[4:]
     for test in (welch_anova, bartlett_test):

@@ -22,7 +22,7 @@ if TYPE_CHECKING:
     from sameline.stats.levene import levene_test
     from sameline.stats.lines import Display
     from sameline.stats.mandel import Mandel, mandel_critical, mandel_statistics
-    from sameline.stats.nested import KnownSpread, NestedAnova, NestedFit, fit_nested, known_spread, nested_anova
+    from sameline.stats.nested import NestedAnova, NestedFit, fit_nested, nested_anova
     from sameline.stats.overall import OverallTest
     from sameline.stats.pairs import compare_pairs
     from sameline.stats.pairs_result import Pair, PairsResult
@@ -54,7 +54,6 @@ __all__ = [
     "Flag",
     "GroupSummary",
     "Grubbs",
-    "KnownSpread",
     "KruskalWallis",
     "Mandel",
     "NestedAnova",
@@ -78,7 +77,6 @@ __all__ = [
     "esd_test",
     "fit_nested",
     "grubbs_test",
-    "known_spread",
     "kruskal_wallis",
     "levene_test",
     "mandel_critical",
@@ -111,7 +109,7 @@ _HOME = {
     "levene": ("levene_test",),
     "lines": ("Display",),
     "mandel": ("Mandel", "mandel_critical", "mandel_statistics"),
-    "nested": ("KnownSpread", "NestedAnova", "NestedFit", "fit_nested", "known_spread", "nested_anova"),
+    "nested": ("NestedAnova", "NestedFit", "fit_nested", "nested_anova"),
     "overall": ("OverallTest",),
     "pairs": ("compare_pairs",),
     "pairs_result": ("Pair", "PairsResult"),

@@ -34,7 +34,7 @@ class Display:
         kind: "lines" (each set is a contiguous stretch of the ordered means), "letters" (it is not), "matrix" (more
             than `MOST_LETTERS` letters would be needed: read `differs`), or "control" (only pairs with a control were
             asked, so no lines are drawn).
-        order: labels in order of mean, lowest first; equal means in the order given.
+        order: labels in order of mean, lowest first; equal means in order of label.
         sets: maximal sets of labels none shown to differ from another, each in order of mean; () for matrix, control.
         letters: letters of each label, such as {"A": "a", "B": "ab"}; the first set is "a"; empty where sets is ().
         fewest: whether the number of sets is proven to be the smallest possible.
@@ -63,7 +63,7 @@ def lines(labels: Sequence[str], means: ArrayLike, differs: ArrayLike) -> Displa
     labels = tuple(labels)
     mean, matrix = np.asarray(means, float), np.array(differs, bool)
     _check(labels, mean, matrix)
-    at = np.argsort(mean, kind="stable")
+    at = _by_mean(labels, mean)
     matrix = matrix[np.ix_(at, at)]
     np.fill_diagonal(matrix, val=False)
     order = tuple(labels[i] for i in at)
@@ -78,9 +78,14 @@ def lines(labels: Sequence[str], means: ArrayLike, differs: ArrayLike) -> Displa
 
 def control_display(labels: Sequence[str], means: ArrayLike, differs: ArrayLike) -> Display:
     """The display of comparisons with a control: groups in order of mean, and no lines: most pairs were not asked."""
-    at = np.argsort(np.asarray(means, float), kind="stable")
+    at = _by_mean(labels, np.asarray(means, float))
     matrix = np.array(differs, bool)[np.ix_(at, at)]
     return _display("control", tuple(labels[i] for i in at), [], matrix, fewest=False)
+
+
+def _by_mean(labels: Sequence[str], means: NDArray[np.float64]) -> list[int]:
+    """Places in order of mean; equal means in order of label, so that the order of rows moves nothing."""
+    return sorted(range(len(labels)), key=lambda at: (means[at], labels[at]))
 
 
 def _stretches(alike: Bools) -> list[list[int]] | None:

@@ -15,6 +15,7 @@ if TYPE_CHECKING:
 
 DIAGNOSTIC_LEVEL = 0.05  # common practice, no source
 ENOUGH_FOR_GAMES_HOWELL = 6
+ROUNDING = 4 * 2.0**-52  # of the largest value: what a computed mean may be off
 
 # Share of families of ten groups, of equal spread and equal means, in which Games-Howell at a nominal 5 % claims some
 # difference, by values a group: simulated 20 000 times each (tests/stats/test_error_rates.py does it again).
@@ -73,6 +74,13 @@ def _flat(result: PairsResult) -> Iterator[Caution]:
     if flat.any() and result.method.family != RANKS:
         yield Caution(
             "no-spread", f"all values are identical in {samples.named(flat)}: check that they are measurements"
+        )
+    rounding = ROUNDING * float(np.abs(samples.values.raw).max())
+    noise = (samples.ss > 0) & (samples.variance < rounding**2)
+    if noise.any() and result.method.family != RANKS:
+        yield Caution(
+            "spread-of-rounding",
+            f"the spread in {samples.named(noise)} is no larger than the rounding of the values: it may be none at all",
         )
 
 
