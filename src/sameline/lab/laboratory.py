@@ -160,6 +160,8 @@ class Lab(Reads):
     def _act(self, what: str, reason: str | None) -> Iterator[Act]:
         if self._by is None:
             raise CallError("who is acting?", advice="give --by CODE, or set SAMELINE_BY")
+        if reason is not None and not reason.strip():
+            raise CallError("the reason is empty", advice="say why; it stands in the audit trail")
         with self._store.act(what, by=self._by, at=self._clock(), reason=reason) as act:
             yield act
 
