@@ -63,7 +63,6 @@ def literal_known_scale(w: mpmath.mpf, lambdas: list[float], *, two_sided: bool)
 @pytest.mark.parametrize(
     ("t", "lambdas", "df", "two_sided"),
     [
-        (2.5, [0.4, 0.7], 6.0, True),
         (7.0, [0.3, 0.6, 0.8], 12.0, True),
         (9.0, [0.5, 0.75], 20.0, False),
         (3.0, [0.2, 0.6, 0.6], 3.0, False),

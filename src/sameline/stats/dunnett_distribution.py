@@ -181,30 +181,44 @@ def _panels(weights: tuple[float, ...], two_sided: bool) -> Panels:
 
 
 def _known_scale_tail(w: Array, weights: tuple[float, ...], two_sided: bool) -> Array:
-    """Return P(max > w) by the trapezoid rule over the control's mean z."""
+    """Return P(max > w), stretch by stretch of w."""
+    out = np.empty_like(w)
+    stretch = np.floor(0.25 * w)
+    for number in np.unique(stretch):
+        members = np.flatnonzero(stretch == number)
+        out[members] = _known_scale_tail_near(w[members], weights, two_sided)
+    return out
+
+
+def _known_scale_tail_near(w: Array, weights: tuple[float, ...], two_sided: bool) -> Array:
+    """Return P(max > w) for like values of w, by the trapezoid rule over the control's mean z.
+
+    While w is inside the plateau the integrand lives around 0. Behind it each comparison's part is at most a multiple
+    of a normal density about λw with deviation c as long as z < w/λ, and at most φ(z) from there on.
+    """
     lambdas, copies = np.unique(weights, return_counts=True)
     rest = np.sqrt((1.0 - lambdas) * (1.0 + lambdas))
-    count = float(copies.sum()) * (2.0 if two_sided else 1.0)
+    log_count = float(np.log(max(copies.sum() * (2.0 if two_sided else 1.0), 2.0)))
     # the product's edge in z is c/lambda wide, and sharper the more factors it has
     narrow = float((rest / np.maximum(lambdas, 1e-3)).min())
-    step = min(0.5, 0.5 * narrow / (1.0 + 0.5 * np.log(count)))
-    # the integrand lives around z = 0 while w is inside the plateau, and around lambda·w behind it
-    plateau = np.sqrt(2.0 * np.log(max(count, 2.0)))
-    low = lambdas[0] * np.maximum(w - plateau, 0.0) - 9.0
-    high = np.maximum(lambdas[-1] * w + 9.0, 9.0)
+    step = min(0.5, 0.5 * narrow / (1.0 + 0.5 * log_count))
+    behind = max(float(w.min()) - np.sqrt(2.0 * log_count), 0.0)
+    low = float((lambdas * behind - 8.8).min())
+    most = float(w.max())
+    bell = lambdas * most + 8.8 * rest
+    high = max(8.8, float(np.where(bell * lambdas < most, bell, np.sqrt(most * most + 78.0)).max()))
     if two_sided:  # symmetric in z: the half line, on points that mirror into an even grid
-        low = (np.floor(np.maximum(low, 0.0) / step) + 0.5) * step
-    nodes = int(np.ceil(((high - low) / step).max()))
+        low = (np.floor(max(low, 0.0) / step) + 0.5) * step
+    z = np.arange(low, high + step, step)[:, None]
     total = np.empty_like(w)
-    size = max(1, 262_144 // nodes)
+    size = max(1, 262_144 // len(z))
     for begin in range(0, w.size, size):
-        part = slice(begin, begin + size)
-        z = low[part] + step * np.arange(nodes)[:, None]
-        log_all_below = np.zeros_like(z)
+        part = w[begin : begin + size]
+        log_all_below = np.zeros((len(z), part.size))
         for weight, c, number in zip(lambdas, rest, copies, strict=True):
-            beyond = ndtr((weight * z - w[part]) / c)
+            beyond = ndtr((weight * z - part) / c)
             if two_sided:
-                beyond += ndtr((-weight * z - w[part]) / c)
+                beyond += ndtr((-weight * z - part) / c)
             log_all_below += number * np.log1p(-np.minimum(beyond, 1.0 - 1e-16))
-        total[part] = (np.exp(-0.5 * z * z) * -np.expm1(log_all_below)).sum(axis=0)
+        total[begin : begin + size] = (np.exp(-0.5 * z * z) * -np.expm1(log_all_below)).sum(axis=0)
     return np.asarray((2.0 if two_sided else 1.0) * step / np.sqrt(2.0 * np.pi) * total)

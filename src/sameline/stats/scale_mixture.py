@@ -98,7 +98,8 @@ def log_mixture_and_slope(tail: Mixand, q: Array, df: Array) -> tuple[Array, Arr
 def _mix(tail: Mixand, q: Array, df: Array, *, with_slope: bool) -> tuple[Array, Array]:
     """Integrate class by class of node counts, so that unlike pairs are not all given the largest."""
     low, high, step = tail.window(q, df)
-    nodes = (8 * np.ceil(((high - low) / step + 1.0) / 8.0)).astype(np.intp)
+    nodes = (16 * np.ceil(((high - low) / step + 1.0) / 16.0)).astype(np.intp)
+    step = (high - low) / (nodes - 1)
     kinds = np.where(df > _MANY_DF, -nodes, nodes)
     log_total, slope = np.empty_like(q), np.empty_like(q)
     for kind in np.unique(kinds):
@@ -107,19 +108,18 @@ def _mix(tail: Mixand, q: Array, df: Array, *, with_slope: bool) -> tuple[Array,
         size = max(1, _BLOCK // count)
         for begin in range(0, members.size, size):
             part = members[begin : begin + size]
-            step = (high[part] - low[part]) / (count - 1)
-            x = low[part] + step * np.arange(count)[:, None]
+            x = low[part] + step[part] * np.arange(count)[:, None]
             scale = np.exp(x)
             weights = tail.log_tail(q[part] * scale) + df[part] * exponent(x, scale)
             top = weights.max(axis=0)
             weights -= top
             np.exp(weights, out=weights)
             total = weights.sum(axis=0)
-            log_total[part] = top + np.log(total * step) + _log_constant(df[part])
+            log_total[part] = top + np.log(total)
             if with_slope:
                 # by parts: d/dlog q ∫ g S(q e^x) = -∫ g' S = ∫ df (e^2x - 1) g S
                 slope[part] = df[part] * (weights * (scale * scale - 1.0)).sum(axis=0) / total
-    return log_total, slope
+    return log_total + np.log(step) + _log_constant(df), slope
 
 
 def _plain_exponent(x: Array, scale: Array) -> Array:
