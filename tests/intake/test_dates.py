@@ -80,7 +80,7 @@ def test_a_local_time_that_came_twice_or_never_is_refused():
         ("ymd", "2003-04-26T00:00:00.000000Z"),
     ],
 )
-def test_the_order_that_a_map_states_settles_an_ambiguous_date(order, utc: str):  # noqa: ANN001 - a literal type
+def test_the_order_that_a_map_states_settles_an_ambiguous_date(order, utc: str):
     assert DateReader("UTC", NOW, order).read("03/04/26").utc == utc
 
 

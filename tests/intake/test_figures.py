@@ -49,14 +49,14 @@ def test_figures_as_people_write_them(text: str, figure: Figure):
         ("1,234,567.25", ".", "1234567.25"),
     ],
 )
-def test_a_stated_decimal_sign_leaves_no_doubt(text: str, decimal, number: str):  # noqa: ANN001 - a literal type
+def test_a_stated_decimal_sign_leaves_no_doubt(text: str, decimal, number: str):
     figure = read_figure(text, decimal)
     assert isinstance(figure, Figure)
     assert (figure.number, figure.doubtful) == (number, None)
 
 
 @pytest.mark.parametrize(("text", "decimal"), [("12.5", ","), ("12,5", "."), ("1.234,5", "."), ("1,234,567", ",")])
-def test_figures_that_contradict_the_stated_sign_are_refused(text: str, decimal):  # noqa: ANN001 - a literal type
+def test_figures_that_contradict_the_stated_sign_are_refused(text: str, decimal):
     assert isinstance(read_figure(text, decimal), NoFigure)
 
 
@@ -87,7 +87,7 @@ def test_letters_among_digits_are_named():
 
 
 @given(st.decimals(-1_000_000, 1_000_000, allow_nan=False, places=3), st.sampled_from([".", ","]))
-def test_grouped_and_plain_writing_are_one_figure(value: object, decimal):  # noqa: ANN001 - a literal type
+def test_grouped_and_plain_writing_are_one_figure(value: object, decimal):
     plain = str(value)
     grouped = f"{value:,}"
     if decimal == ",":

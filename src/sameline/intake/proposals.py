@@ -5,6 +5,7 @@ What a column is, is concluded from what stands in it (registered codes, dates, 
 
 from __future__ import annotations
 
+from collections import deque
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from itertools import islice
@@ -20,7 +21,7 @@ from sameline.intake.tables import HEAD, Row, Table, UnreadableError, explaining
 from sameline.intake.words import heading_words
 from sameline.records.drafts import Register
 
-_SEEN = 400  # rows that a proposal looks at
+_SEEN, _LAST = 400, 20  # rows that a proposal looks at: the first and the last
 
 
 @dataclass(frozen=True, slots=True)
@@ -136,9 +137,11 @@ class _Seen:
 def _seen(table: Table, register: Register) -> _Seen | None:
     try:
         with explaining(table):
-            rows = [row for row in islice(table.rows(), _SEEN) if any(cell.strip() for cell in row[1])]
+            every = table.rows()
+            some = [*islice(every, _SEEN), *deque(every, maxlen=_LAST)]
     except UnreadableError:
         return None
+    rows = [row for row in some if any(cell.strip() for cell in row[1])]
     words = heading_words(register)
     scored = [(_likeness(row, words), -number, row) for number, row in rows[:HEAD]]
     if not scored:
