@@ -184,6 +184,17 @@ def test_few_controls_need_fine_steps():
     assert np.allclose(finer, together, rtol=0.12)
 
 
+@pytest.mark.parametrize("df", [1.0, 50.0, 1e6, 1e300, math.inf])
+@pytest.mark.parametrize("lambdas", [[0.0], [0.9999], [0.5, 0.9], [0.1] * 50])
+@pytest.mark.parametrize("alternative", SIDES)
+def test_extremes_stay_finite(lambdas: list[float], df: float, alternative: str):
+    t = np.array([-math.inf, -1e308, -10.0, -1e-320, 0.0, 1e-320, 1e-5, 1.0, 1e5, 1e308, math.inf])
+    assert np.isfinite(dunnett_sf(t, lambdas, df, alternative)).all()
+    for level in (1e-250, 0.6, 0.999):
+        critical = dunnett_isf(level, lambdas, df, alternative)
+        assert dunnett_sf(critical, lambdas, df, alternative) == pytest.approx(level, rel=1e-10, abs=0)
+
+
 def test_shapes():
     assert isinstance(dunnett_sf(2.0, [0.5], 10), float)
     assert isinstance(dunnett_isf(0.05, [0.5], 10), float)

@@ -226,6 +226,24 @@ def test_tail_falls_with_q_and_grows_with_groups():
         previous = tail
 
 
+@pytest.mark.parametrize("df", [1.0, 99.9, 100.1, 1e12, 1e19, 1e300, math.inf])
+@pytest.mark.parametrize("groups", [2, 200, 10_000])
+def test_extremes_stay_finite_and_ordered(groups: int, df: float):
+    q = np.array([0.0, 1e-320, 1e-300, 1e-9, 1e-3, 1.0, 10.0, 60.0, 1e10, 1e150, 1e200, 1e308, math.inf])
+    upper, lower = studentized_range_sf(q, groups, df), studentized_range_cdf(q, groups, df)
+    assert np.isfinite(upper).all()
+    assert np.isfinite(lower).all()
+    assert (np.diff(upper) <= 1e-13).all()
+    assert (np.diff(lower) >= -1e-13).all()
+    one_by_one = studentized_range_sf(q, groups, np.full_like(q, df))
+    assert np.allclose(upper, one_by_one, rtol=3e-12, atol=1e-280)
+    for level in (1e-250, 1e-100, 0.5, 0.999, 1 - 1e-9):
+        at = studentized_range_isf(level, groups, df)
+        assert studentized_range_sf(at, groups, df) == pytest.approx(level, rel=1e-10, abs=0)
+        below = studentized_range_ppf(level, groups, df)
+        assert studentized_range_cdf(below, groups, df) == pytest.approx(level, rel=1e-10, abs=0)
+
+
 def test_shapes_and_ends():
     assert isinstance(studentized_range_sf(3.0, 4, 10), float)
     assert studentized_range_sf([[3.0], [4.0]], 4, [5.0, 6.0, math.inf]).shape == (2, 3)

@@ -23,7 +23,7 @@ from scipy.special import ndtr, ndtri, stdtrit
 
 from sameline.errors import StatsError
 from sameline.stats.panels import Panels, fit_panels
-from sameline.stats.scale_mixture import KnownScaleTail, log_mixture, log_mixture_and_slope
+from sameline.stats.scale_mixture import KnownScaleTail, effective_df, log_mixture, log_mixture_and_slope
 
 if TYPE_CHECKING:
     from numpy.typing import ArrayLike, NDArray
@@ -35,6 +35,7 @@ Alternative = Literal["two-sided", "greater", "less"]
 # The tail at 36 is about 1e-283: beyond it the tail is continued as a normal one.
 _END = 36.0
 _TERMS = 14
+_SMALLEST_T, _LARGEST_T = 1e-300, 1e300
 
 
 def dunnett_sf(t: ArrayLike, lambdas: ArrayLike, df: float, alternative: Alternative = "two-sided") -> Any:  # noqa: ANN401 - float in, float out
@@ -57,7 +58,7 @@ def dunnett_sf(t: ArrayLike, lambdas: ArrayLike, df: float, alternative: Alterna
         raise StatsError("t is not a number", where="t")
     weights, two_sided = _weights(lambdas), _is_two_sided(alternative)
     oriented = np.abs(statistic) if two_sided else -statistic if alternative == "less" else statistic
-    log_sf = _log_sf(np.clip(oriented.ravel(), -1e150, 1e150), weights, two_sided, _freedom(df))
+    log_sf = _log_sf(np.clip(oriented.ravel(), -_LARGEST_T, _LARGEST_T), weights, two_sided, _freedom(df))
     flat = oriented.ravel()
     sf = np.exp(np.where(np.isinf(flat), np.where(flat > 0, -np.inf, 0.0), log_sf))
     return sf.reshape(statistic.shape) if statistic.shape else float(sf[0])
@@ -103,13 +104,13 @@ def _freedom(df: float) -> float:
     """Return the degrees of freedom, checked."""
     if not df >= 1.0:
         raise StatsError(f"degrees of freedom must be at least 1, got {df}", where="df")
-    return float(df)
+    return float(effective_df(np.array([df]))[0])
 
 
 def _log_sf(t: Array, weights: tuple[float, ...], two_sided: bool, df: float) -> Array:
     """Return log P(max > t)."""
     out = np.zeros_like(t) if two_sided else np.full_like(t, _tail(weights, two_sided).log_tail(np.zeros(1))[0])
-    moved = np.flatnonzero(t > 0.0 if two_sided else t != 0.0)
+    moved = np.flatnonzero((t if two_sided else np.abs(t)) > _SMALLEST_T)
     if np.isinf(df):
         out[moved] = _tail(weights, two_sided).log_tail(t[moved])
     else:
@@ -160,10 +161,10 @@ def _tail(weights: tuple[float, ...], two_sided: bool) -> KnownScaleTail:
     panels = _panels(weights, two_sided)
 
     def log_tail(w: Array) -> Array:
-        value: Array = panels(np.clip(w, panels.start, _END))
-        beyond = w > _END
-        if beyond.any():
-            value -= np.where(beyond, 0.5 * (w * w - _END * _END), 0.0)
+        inside = np.clip(w, panels.start, _END)
+        value: Array = panels(inside)
+        if (w > _END).any():
+            value -= np.where(w > _END, 0.5 * (np.clip(w, 0.0, 1e150) ** 2 - _END * _END), 0.0)
         return value
 
     return KnownScaleTail(log_tail, 0.5, len(weights) * (2.0 if two_sided else 1.0))

@@ -100,8 +100,8 @@ def range_tail(groups: int) -> KnownScaleTail:
     def log_tail(w: Array) -> Array:
         if not (w > _END).any():
             return panels(w)
-        inside = np.minimum(w, _END)
-        return np.asarray(panels(inside) - 0.25 * (w * w - inside * inside))
+        inside, squared = np.minimum(w, _END), np.minimum(w, 1e150) ** 2
+        return np.asarray(panels(inside) - 0.25 * (squared - inside * inside))
 
     return KnownScaleTail(log_tail, 0.25, 0.5 * groups * (groups - 1))
 

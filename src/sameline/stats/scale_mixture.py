@@ -35,6 +35,7 @@ _DEPTH = 39.0
 STEP_IN_SIGMA = 0.5
 # Beyond this x - (e^2x - 1)/2 needs its series near zero.
 _MANY_DF = 100.0
+_PRACTICALLY_INFINITE = 1e18
 # Nodes times pairs in one go, so that the working arrays stay in the cache.
 _BLOCK = 65_536
 
@@ -70,13 +71,21 @@ class KnownScaleTail:
         # S is of order 1 up to the plateau's end, where count·exp(-rate·w²) comes down to 1, and falls behind
         plateau = np.sqrt(log_count / self.rate)
         # below zero (one-sided statistics only) S rises towards 1, and g alone says where the integrand lives
-        positive = q > 0.0
-        shift = np.where(positive, -0.5 * np.log1p(2.0 * self.rate * q * q / df), 0.0)
-        edge = np.where(positive, np.log(plateau / np.abs(q)), 0.0)
+        positive, log_q = q > 0.0, np.log(np.abs(q))
+        shift = np.where(positive, -0.5 * np.logaddexp(0.0, np.log(2.0 * self.rate / df) + 2.0 * log_q), 0.0)
+        edge = np.where(positive, np.log(plateau) - log_q, 0.0)
         left, right = reach(df)
         # the edge of S in log w is about 1/(2 log count) wide (extreme values)
         step = np.minimum(min(0.12, 0.6 / log_count), STEP_IN_SIGMA / np.sqrt(2.0 * df))
         return shift - left, np.minimum(0.0, np.maximum(shift, edge)) + right, step
+
+
+def effective_df(df: Array) -> Array:
+    """Return the degrees of freedom with those that no double can tell from infinity made infinite.
+
+    log P moves by about q^4/(16 df) between df and infinity: beyond 1e18 by less than 1e-12 as far as 1e-290.
+    """
+    return np.where(df > _PRACTICALLY_INFINITE, np.inf, df)
 
 
 def log_mixture(tail: Mixand, q: Array, df: Array) -> Array:
@@ -118,7 +127,7 @@ def _mix(tail: Mixand, q: Array, df: Array, *, with_slope: bool) -> tuple[Array,
             log_total[part] = top + np.log(total)
             if with_slope:
                 # by parts: d/dlog q ∫ g S(q e^x) = -∫ g' S = ∫ df (e^2x - 1) g S
-                slope[part] = df[part] * (weights * (scale * scale - 1.0)).sum(axis=0) / total
+                slope[part] = df[part] * (weights * np.expm1(2.0 * x)).sum(axis=0) / total
     return log_total + np.log(step) + _log_constant(df), slope
 
 

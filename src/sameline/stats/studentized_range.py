@@ -18,6 +18,7 @@ from sameline.errors import StatsError
 from sameline.stats.range_curves import log_sf_over_q, quantiles_over_df
 from sameline.stats.range_lower_tail import log_cdf_and_slope, log_lower_quantile
 from sameline.stats.range_tail import log_quantile, log_sf
+from sameline.stats.scale_mixture import effective_df
 
 if TYPE_CHECKING:
     from numpy.typing import ArrayLike, NDArray
@@ -25,7 +26,7 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
 
 _MOST_GROUPS = 10_000
-_SMALLEST_Q, _LARGEST_Q = 1e-300, 1e150
+_SMALLEST_Q, _LARGEST_Q = 1e-300, 1e300
 _LOG_HALF = float(np.log(0.5))
 
 
@@ -68,13 +69,15 @@ def studentized_range_isf(alpha: ArrayLike, groups: int, df: ArrayLike) -> Any: 
         StatsError: as `studentized_range_sf`, or an alpha that is not strictly between 0 and 1.
     """
     level, freedom = _arguments(alpha, df, "alpha")
-    return _shaped(_quantile(_probability(level, "alpha"), _group_count(groups), freedom), alpha, df)
+    upper = _probability(level, "alpha")
+    return _shaped(_quantile(upper, 1.0 - upper, _group_count(groups), freedom), alpha, df)
 
 
 def studentized_range_ppf(p: ArrayLike, groups: int, df: ArrayLike) -> Any:  # noqa: ANN401 - float in, float out
     """Return the q with P(Q <= q) = p; arguments and errors as `studentized_range_isf`."""
     level, freedom = _arguments(p, df, "p")
-    return _shaped(_lower_quantile(_probability(level, "p"), _group_count(groups), freedom), p, df)
+    lower = _probability(level, "p")
+    return _shaped(_quantile(1.0 - lower, lower, _group_count(groups), freedom), p, df)
 
 
 def _arguments(value: ArrayLike, df: ArrayLike, name: str) -> tuple[Array, Array]:
@@ -84,6 +87,7 @@ def _arguments(value: ArrayLike, df: ArrayLike, name: str) -> tuple[Array, Array
         raise StatsError(f"{name} is not a number", where=name)
     if not (second >= 1.0).all():
         raise StatsError(f"degrees of freedom must be at least 1, got {second.min()}", where="df")
+    second = effective_df(second)
     if second.size == 1:
         return first.ravel(), second.ravel()
     first, second = np.broadcast_arrays(first, second)
@@ -135,11 +139,23 @@ def _cdf(q: Array, groups: int, df: Array) -> Array:
     return out
 
 
-def _quantile(alpha: Array, groups: int, df: Array) -> Array:
-    """Return the q with P(Q > q) = alpha."""
+def _quantile(upper: Array, lower: Array, groups: int, df: Array) -> Array:
+    """Return the q with P(Q > q) = upper = 1 - lower, from whichever tail is the smaller."""
+    low = lower < 0.5
+    if not low.any():
+        return _upper_quantile(upper, groups, df)
+    freedom = np.broadcast_to(df, upper.shape)
+    out = np.empty_like(upper)
+    out[low] = np.exp(log_lower_quantile(np.log(lower[low]), groups, freedom[low]))
+    out[~low] = _upper_quantile(upper[~low], groups, freedom[~low])
+    return out
+
+
+def _upper_quantile(alpha: Array, groups: int, df: Array) -> Array:
+    """Return the q with P(Q > q) = alpha for alpha up to one half."""
     if alpha.size > 1 and df.size > 1 and (alpha == alpha[0]).all():
         return quantiles_over_df(float(alpha[0]), groups, df)
-    if alpha.size == 1 and df.size == 1:
+    if alpha.size == 1:
         return np.array([_one_quantile(float(alpha[0]), groups, float(df[0]))])
     return np.asarray(np.exp(log_quantile(np.log(alpha), groups, np.broadcast_to(df, alpha.shape))))
 
@@ -148,15 +164,3 @@ def _quantile(alpha: Array, groups: int, df: Array) -> Array:
 def _one_quantile(alpha: float, groups: int, df: float) -> float:
     """Return one quantile, kept: a comparison looked at again asks for the same."""
     return float(np.exp(log_quantile(np.array([np.log(alpha)]), groups, np.array([df])))[0])
-
-
-def _lower_quantile(p: Array, groups: int, df: Array) -> Array:
-    """Return the q with P(Q <= q) = p, from whichever tail is the smaller."""
-    low = p < 0.5
-    if not low.any():
-        return _quantile(1.0 - p, groups, df)
-    freedom = np.broadcast_to(df, p.shape)
-    out = np.empty_like(p)
-    out[low] = np.exp(log_lower_quantile(np.log(p[low]), groups, freedom[low]))
-    out[~low] = _quantile(1.0 - p[~low], groups, freedom[~low])
-    return out
