@@ -104,7 +104,7 @@ def starting_points(squares: MeanSquares) -> list[NDArray[np.float64]]:
     """Where the search starts: the mean squares' own estimate, and nearly all spread in the residual."""
     moments = np.linalg.solve(squares.expectation, squares.value)
     scale = float(np.abs(moments).sum())
-    residual = np.append(np.full(moments.size - 1, 1e-3), 1.0)
+    residual = np.append(np.full(moments.size - 1, 1e-2), 1.0)
     return [np.maximum(moments, 1e-3 * scale * residual), scale * residual]
 
 

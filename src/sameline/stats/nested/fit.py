@@ -10,7 +10,7 @@ References: Harville (1977), J. Amer. Statist. Assoc. 72:320-338 (REML); Kenward
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
@@ -67,6 +67,15 @@ class NestedFit:
     unseen: str | None
     _estimate: Estimate
     _rows: Rows
+
+    def using(self, df: str) -> NestedFit:
+        """The same fit judged with the other kind of degrees of freedom, "kenward-roger" or "satterthwaite".
+
+        Raises:
+            StatsError: neither of the two.
+        """
+        one_of("df", df, DF_METHODS)
+        return replace(self, df_method=df)
 
     def means(self, alpha: float = 0.05) -> NestedMeans:
         """Group means with 1 - alpha intervals, each for itself.
@@ -172,10 +181,7 @@ def fit_nested(
     Raises:
         StatsError: the input cannot be read, nothing varies, or there is no replication at any level.
     """
-    if df not in DF_METHODS:
-        raise StatsError(
-            f"degrees of freedom by {df!r} are not known here", where="df", advice=f"one of {', '.join(DF_METHODS)}"
-        )
+    one_of("df", df, DF_METHODS)
     rows = read_rows(values, groups, batches, runs, sessions)
     chain = chain_of(rows, spread_known=known is not None)
     merged = session_collapsed(chain)

@@ -41,7 +41,8 @@ class Evaluated(Protocol):
 
 E = TypeVar("E", bound=Evaluated)
 MOST_STEPS = 200
-CLOSE, DONE = 1e-7, 1e-26
+CLOSE, DONE = 1e-7, 1e-20
+SAME = 0.02  # of the largest component: a Newton step that aims so near to a known minimum leads to it
 
 
 def minimise(
@@ -62,7 +63,7 @@ def minimise(
     """
     best: tuple[NDArray[np.float64], E] | None = None
     for start in starts:
-        found = _descend(evaluate, start, shrink=0.1 if last_positive else 0.0)
+        found = _descend(evaluate, start, 0.1 if last_positive else 0.0, None if best is None else best[0])
         if found and (best is None or found[1].value < best[1].value - 1e-9 * (1.0 + abs(best[1].value))):
             best = found
     if best is None:
@@ -75,8 +76,12 @@ def minimise(
 
 
 def _descend(
-    evaluate: Callable[[NDArray[np.float64]], E], start: NDArray[np.float64], shrink: float
+    evaluate: Callable[[NDArray[np.float64]], E],
+    start: NDArray[np.float64],
+    shrink: float,
+    known: NDArray[np.float64] | None,
 ) -> tuple[NDArray[np.float64], E] | None:
+    """The minimum below `start`; None if there is none or if it is the known one."""
     theta, here = start, evaluate(start)
     last = np.inf
     for _ in range(MOST_STEPS):
@@ -85,6 +90,8 @@ def _descend(
             return theta, here
         length = 1.0
         trial = _moved(theta, step, shrink)
+        if known is not None and decrement < 1.0 and np.max(np.abs(trial - known)) < SAME * known.max():
+            return None
         there = evaluate(trial)
         while decrement > CLOSE and there.value > here.value + 1e-4 * float(here.gradient @ (trial - theta)):
             length *= 0.5

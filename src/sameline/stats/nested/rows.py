@@ -6,7 +6,9 @@ the values (the lower median), so that a large common offset costs nothing.
 
 from __future__ import annotations
 
+from collections import defaultdict
 from dataclasses import dataclass
+from itertools import count
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -124,12 +126,14 @@ def _codes(
 
 def _encoded(name: str, given: Iterable[Any]) -> tuple[tuple[str, ...], NDArray[np.intp]]:
     """`encode`, asked only about different labels where one type makes that safe, which is much faster."""
-    plain = list(given.tolist()) if isinstance(given, np.ndarray) and given.ndim == 1 else given
+    plain = given.tolist() if isinstance(given, np.ndarray) and given.ndim == 1 else given
     try:
-        if type(plain) is list and len(set(map(type, plain))) == 1:
-            place = {label: at for at, label in enumerate(dict.fromkeys(plain))}
-            seen, of_different = encode(list(place))
-            return seen, of_different[np.fromiter(map(place.__getitem__, plain), np.intp, len(plain))]
+        if type(plain) is list:
+            place: defaultdict[Any, int] = defaultdict(count().__next__)
+            codes = np.fromiter(map(place.__getitem__, plain), np.intp, len(plain))
+            if set(map(type, place)) == {str} or len(set(map(type, plain))) == 1:
+                seen, of_different = encode(list(place))
+                return seen, of_different[codes]
         return encode(given)
     except StatsError as error:
         raise StatsError(error.message, where=name, advice=error.advice) from error
