@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime as dt
 import importlib.util
 import itertools
 import shutil
@@ -12,6 +13,8 @@ from types import ModuleType
 
 import pytest
 from sqlalchemy import make_url
+
+from sameline.lab import open_lab
 
 
 def _beside(name: str) -> ModuleType:
@@ -69,6 +72,23 @@ def new_place(kind: str, tmp_path: Path, request: pytest.FixtureRequest):
         return request.getfixturevalue("postgresql").new()
 
     return place
+
+
+@pytest.fixture(scope="session")
+def bare_template(tmp_path_factory: pytest.TempPathFactory):
+    path = tmp_path_factory.mktemp("template") / "bare.db"
+    laboratory.bare(str(path)).close()
+    return path
+
+
+@pytest.fixture
+def lab(tmp_path: Path, bare_template: Path):
+    """A laboratory on SQLite in which things are registered, and nothing is tested or asked; its clock goes on."""
+    path = tmp_path / "bare.db"
+    shutil.copy(bare_template, path)
+    start = laboratory.START + dt.timedelta(hours=2)
+    with open_lab(path, by="ana", clock=laboratory.Clock(start)) as opened:
+        yield opened
 
 
 @pytest.fixture

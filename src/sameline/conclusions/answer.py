@@ -142,12 +142,10 @@ def _set_aside(revision: Revision, inputs: Inputs, past: Past, found: Answer) ->
     ]
     runs = len({v.run for v in aside})
     what = f"{len(aside)} {_plural('value', len(aside))} of {runs} {_plural('run', runs)} are set aside"
-    if found.state != ANSWERED or other.state != ANSWERED:
-        effect = (
-            "put back, the comparison could not be computed"
-            if found.state == ANSWERED
-            else "it could not be compared with them"
-        )
+    if other.state != ANSWERED:
+        effect = f"put back, it could not be computed{'' if found.state == ANSWERED else ' either'}"
+    elif found.state != ANSWERED:
+        effect = "put back, it could be computed"
     elif turned:
         effect = "put back, these verdicts would turn: " + "; ".join(
             f"{x.a} and {x.b} from {x.now} to {x.with_them}" for x in turned
