@@ -3,9 +3,10 @@
 Under equal means the largest studentized difference at each look is a function of the groups' partial sums and of the
 residual sum of squares; both are simulated as they grow, with the units each look really had, so unequal group sizes
 and few degrees of freedom need no approximation. At look j the boundary is the least value that keeps the simulated
-probability of having crossed at looks 1 to j within what the spending function allows until now. Where the simulation
-has too few crossings to tell, the exact tail of the studentized range at that look bounds it instead (a union bound,
-so never too low). Boundaries are rounded up to 4 decimals and stored; stored ones are never computed again.
+probability of having crossed at looks 1 to j within what the spending function allows until now. At the first look
+with equal sizes the tail of the studentized range is exact and is used. Where the simulation has too few crossings to
+tell, that tail at the error rate spent now bounds the boundary instead (a union bound, so never too low).
+Boundaries are rounded up to 4 decimals and stored; stored ones are never computed again.
 
 Strong control: the largest difference among truly equal pairs is no larger than that of all pairs under equal means,
 so the boundary holds whatever the other means are; with it every difference +- boundary * standard error / sqrt(2) is a
@@ -82,12 +83,14 @@ def next_boundaries(
     if present < 2 or df <= 0:
         return (None,) * len(rates)
     statistic, crossed = _simulate(history, len(rates), draws, seed)
+    first_and_equal = len(history.n) == 1 and len({count for count in sizes if count > 0}) == 1
     found: list[float | None] = []
     for at, rate in enumerate(rates):
         increment = spent(spending, fractions[1], rate) - spent(spending, fractions[0], rate)
         exact = float(studentized_range_isf(increment, present, df)) if increment > 1e-290 else None
         allowed = math.floor(spent(spending, fractions[1], rate) * draws) - int(crossed[at].sum())
-        simulated = _quantile(statistic[~crossed[at]], allowed) if allowed >= _FIRM else math.inf
+        known = exact is not None and first_and_equal
+        simulated = _quantile(statistic[~crossed[at]], allowed) if allowed >= _FIRM and not known else math.inf
         best = min(simulated, math.inf if exact is None else exact)
         found.append(None if math.isinf(best) else math.ceil(best * 1e4) / 1e4)
     return tuple(found)

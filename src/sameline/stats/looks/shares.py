@@ -55,21 +55,21 @@ def with_joiners(founders_p: Floats, log_pairs: Floats, groups: int, founders: i
     """Overall p-values of all pairs from the founders' closed ones and the joiners' evidence.
 
     Args:
-        founders_p: (m0,) closed p-values of the founders' pairs.
-        log_pairs: (m,) log E of all pairs asked, in the order of all pairs (or those with the control).
+        founders_p: (..., m0) closed p-values of the founders' pairs.
+        log_pairs: (..., m) log E of all pairs asked, in the order of all pairs (or those with the control).
         groups: k so far.
         founders: how many were stated at the outset, at least 2.
         control: whether only pairs with the first group are asked.
 
     Returns:
-        (m,) p-values on the scale of the whole alpha.
+        (..., m) p-values on the scale of the whole alpha.
     """
     a, b = pair_indices(groups)
     if control:
         a, b = a[: groups - 1], b[: groups - 1]
-    p = np.ones(a.size)
-    p[b < founders] = np.minimum(1.0, founders_p / FOUNDERS)
+    p = np.ones(log_pairs.shape)
+    p[..., b < founders] = np.minimum(1.0, founders_p / FOUNDERS)
     for number in range(1, groups - founders + 1):
         column = b == founders + number - 1
-        p[column] = np.minimum(1.0, holm_from_log(log_pairs[column]) / joiner_part(number))
+        p[..., column] = np.minimum(1.0, holm_from_log(log_pairs[..., column]) / joiner_part(number))
     return p
