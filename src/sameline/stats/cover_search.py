@@ -8,8 +8,8 @@ from numpy.typing import NDArray
 from sameline.stats.cliques import bits, close, edges, matrix, take_forced
 
 RESTARTS = 30  # greedy covers tried; all counts here are fixed, so that the answer never varies
-GREEDY_STEPS = 15_000  # vertices added over all of them, after which no other is begun
-SEARCH_WORK = 40_000  # edges and cliques looked at when searching for fewer
+GREEDY_STEPS = 10_000  # vertices added over all of them, after which no other is begun
+SEARCH_WORK = 25_000  # edges and cliques looked at when searching for fewer
 SEARCH_GROUPS = 40  # beyond it the search would not end within its work and is not begun
 
 Bools = NDArray[np.bool_]
@@ -32,13 +32,12 @@ def fewest_cliques(graph: list[int], open_: list[int], most: int) -> tuple[list[
 def greedy(graph: list[int], open_: list[int], most: int) -> list[int] | None:
     """The best of several greedy covers, without redundant cliques; None where each has more than `most`."""
     alike, wanted = matrix(graph), matrix(open_)
-    random = np.random.Generator(np.random.PCG64(2004))  # breaks ties, from a fixed seed: the same on every run
     best: list[list[int]] | None = None
     steps = 0
-    for _ in range(RESTARTS):
-        if steps >= GREEDY_STEPS:
+    for restart in range(RESTARTS):
+        if steps >= GREEDY_STEPS or (restart > 1 and best is None):
             break
-        found = _greedy_once(alike, wanted, random, 2 * (most if best is None else len(best)) + 8)
+        found = _greedy_once(alike, wanted, restart, 2 * (most if best is None else len(best)) + 8)
         steps += sum(map(len, found)) + len(graph)
         kept = _without_redundant(found, wanted)
         if kept and len(kept) <= most and (best is None or len(kept) < len(best)):
@@ -46,15 +45,16 @@ def greedy(graph: list[int], open_: list[int], most: int) -> list[int] | None:
     return None if best is None else [sum(1 << vertex for vertex in clique) for clique in best]
 
 
-def _greedy_once(alike: Bools, wanted: Bools, random: np.random.Generator, limit: int) -> list[list[int]]:
-    """Grows cliques from the vertex with most open edges, each step by the vertex that closes most, ties at random.
+def _greedy_once(alike: Bools, wanted: Bools, restart: int, limit: int) -> list[list[int]]:
+    """Grows cliques from the vertex with most open edges, each step by the vertex that closes most.
 
+    Ties go another way in each restart.
     Stops at `limit` cliques, short of covering everything; such a cover is not kept.
     """
     left = wanted.copy()
     cliques: list[list[int]] = []
     while len(cliques) < limit and left.any():
-        noise = random.random(len(alike)) / 2.0
+        noise = _scattered(len(alike), restart * limit + len(cliques))
         start = int(np.argmax(left.sum(axis=1) + noise))
         clique, near = [start], alike[start].copy()
         gain = left[start] + noise
@@ -66,6 +66,17 @@ def _greedy_once(alike: Bools, wanted: Bools, random: np.random.Generator, limit
         left[np.ix_(clique, clique)] = False
         cliques.append(sorted(clique))
     return cliques
+
+
+def _scattered(count: int, turn: int) -> NDArray[np.float64]:
+    """Numbers in [0, 1/2) that look random and are the same for ever: the mixing steps of splitmix64.
+
+    Reference: Steele, G. L., Lea, D. & Flood, C. H. (2014), Fast splittable pseudorandom number generators, OOPSLA.
+    """
+    x = (np.arange(count, dtype=np.uint64) + np.uint64(turn * 65_536 + 1)) * np.uint64(0x9E3779B97F4A7C15)
+    x = (x ^ (x >> np.uint64(30))) * np.uint64(0xBF58476D1CE4E5B9)
+    x = (x ^ (x >> np.uint64(27))) * np.uint64(0x94D049BB133111EB)
+    return (x ^ (x >> np.uint64(31))) / 2.0**65
 
 
 def _without_redundant(cliques: list[list[int]], wanted: Bools) -> list[list[int]]:

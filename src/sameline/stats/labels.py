@@ -27,7 +27,10 @@ def encode(groups: Iterable[Any]) -> tuple[tuple[str, ...], NDArray[np.intp]]:
         StatsError: a label is missing, is not text or a number, or a number and a text read alike.
     """
     given = _listed(groups)
-    if set(map(type, given)) != {str}:
+    kinds = set(map(type, given))
+    if kinds == {int}:
+        given = list(map(str, given))
+    elif kinds != {str}:
         given = _as_text(given)
     _refuse_missing(given)
     code: dict[str, int] = {}
