@@ -4,12 +4,12 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from sameline.version import __version__
+
 if TYPE_CHECKING:
     from sameline.lab import Lab, open_lab
 
 __all__ = ["Lab", "__version__", "open_lab"]
-
-__version__ = "0.1.0"
 
 
 def __getattr__(name: str) -> object:

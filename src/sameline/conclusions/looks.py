@@ -235,6 +235,8 @@ def _single(looking: Looking) -> Judged:
     if before is None and wanted is not None and units < wanted:
         reason = f"no verdict before {wanted} units are there; now {units}"
         return _masked(looking, {}, reason, CautionAnswer("looks", reason))
+    if before is None and not _can_be_made(looking):
+        return replace(looking.alone, looks_state=None)
     if before is None:
         made = {"units": units, "pairs": [_kept(p) for p in looking.alone.pairs]}
         cautions = looking.alone.cautions
@@ -246,6 +248,14 @@ def _single(looking: Looking) -> Judged:
         reason = f"the one look at these data was made, at {before['units']} units, before the question was restated"
         return _masked(looking, {"single": before}, reason, CautionAnswer("looks", reason))
     return _after_the_look(looking, before)
+
+
+def _can_be_made(looking: Looking) -> bool:
+    """Whether the one look would judge something: every group has values and, were no amount stated, every pair."""
+    judged = [p.differs is not None for p in looking.alone.pairs]
+    if looking.revision.final_units is not None:
+        return any(judged)
+    return all(judged) and len(looking.alone.groups) == len(looking.inputs.groups)
 
 
 def _after_the_look(looking: Looking, before: dict[str, Any]) -> Judged:

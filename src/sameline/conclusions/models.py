@@ -13,11 +13,11 @@ from functools import cache
 from importlib.metadata import version
 from typing import TYPE_CHECKING
 
-from sameline import __version__
 from sameline.conclusions.judged import GroupFigures, Judged, finite, sd
 from sameline.conclusions.looks import Looking, over_all_looks
 from sameline.errors import StatsError
 from sameline.records.answers import CautionAnswer, ComponentAnswer, GlobalTest, PairAnswer
+from sameline.version import __version__
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Iterator
@@ -217,9 +217,15 @@ def _known(inputs: Inputs) -> KnownSpread | None:
         return None
     values, batches, runs = zip(*rows, strict=True)
     try:
-        return known_spread(values, batches, runs, source="other batches of this characteristic")
+        return known_spread(values, batches, runs, source=f"the runs of {_few(sorted(set(batches)))}")
     except StatsError:
         return None  # no other batch has two runs; the fit then says that the spread cannot be seen
+
+
+def _few(codes: list[str], most: int = 6) -> str:
+    """Batch codes in a sentence, and how many more there are."""
+    rest = len(codes) - most
+    return ", ".join(codes[:most]) + (f" and {rest} other batches" if rest > 0 else "")
 
 
 def _square(deviation: float | None) -> float | None:

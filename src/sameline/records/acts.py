@@ -13,12 +13,12 @@ from typing import Any
 
 from sqlalchemy import Connection, Table, func, insert, select
 
-from sameline import __version__
 from sameline.errors import CallError, StoreError
 from sameline.ledger.manifest import TableRows, manifest_text
 from sameline.ledger.merkle import Frontier, leaf_hash, leaf_hashes, root
 from sameline.ledger.rows import RowEncoder, row_bytes
 from sameline.records.tables import entry, hashed_columns, tree_node
+from sameline.version import __version__
 
 Row = tuple[Any, ...]
 
