@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 
 from sameline.records.answers import ANSWERED, Answer, Conclusion, GroupAnswer, PairAnswer
 from sameline.reports.changes import look_words, tally
+from sameline.reports.lines import bars, by_mean, drawn_lines
 from sameline.reports.subject import Subject
 from sameline.reports.text import count, interval, moment, number, p_value, percent, plain, table
 
-_BAR = "│"
 _MATTERS = "differs and matters"
 
 MODEL_WORDS = {
@@ -149,9 +149,9 @@ def _head(conclusion: Conclusion, subject: Subject) -> list[str]:
 def _groups(groups: Sequence[GroupAnswer], subject: Subject, *, drawn: bool) -> list[str]:
     """The groups in order of mean, and beside them the lines: a bar runs along the groups that stand on one line."""
     decimals = subject.decimals + 1
-    known = sorted((g for g in groups if g.mean is not None), key=lambda g: (g.mean, g.label))
+    known = by_mean(groups)
     empty = [g for g in groups if g.mean is None]
-    letters = sorted({letter for g in known for letter in g.letters}, key=_first_at(known))
+    lines = list(drawn_lines(groups))
     rows = [
         (
             g.label,
@@ -160,7 +160,7 @@ def _groups(groups: Sequence[GroupAnswer], subject: Subject, *, drawn: bool) -> 
             number(g.mean, decimals),
             number(g.sd, decimals + 1),
             interval(g.lower, g.upper, decimals),
-            _bars(g, letters) if drawn else g.letters,
+            bars(g, lines) if drawn else g.letters,
         )
         for g in (*known, *empty)
     ]
@@ -172,21 +172,9 @@ def _groups(groups: Sequence[GroupAnswer], subject: Subject, *, drawn: bool) -> 
         "mean",
         "sd of units",
         f"{confidence} interval of the mean",
-        "lines" if drawn else "letters" if letters else "",
+        "lines" if drawn else "letters" if lines else "",
     )
     return table(headings, rows, "<>>>><<")
-
-
-def _first_at(known: Sequence[GroupAnswer]) -> Callable[[str], int]:
-    at: dict[str, int] = {}
-    for place, group in enumerate(known):
-        for letter in group.letters:
-            at.setdefault(letter, place)
-    return at.__getitem__
-
-
-def _bars(group: GroupAnswer, letters: Sequence[str]) -> str:
-    return " ".join(_BAR if letter in group.letters else " " for letter in letters)
 
 
 def _legend(conclusion: Conclusion) -> list[str]:

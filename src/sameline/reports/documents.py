@@ -9,6 +9,7 @@ from sameline.conclusions.recompute import CHECKS, Verification
 from sameline.records.answers import Conclusion
 from sameline.records.trail import TrailEntry
 from sameline.reports.changes import change_line
+from sameline.reports.lines import drawn_lines
 from sameline.reports.subject import Subject
 
 
@@ -47,18 +48,8 @@ def conclusion_document(conclusion: Conclusion, subject: Subject, *, behind: boo
         "causes": list(conclusion.causes),
         "turns": [asdict(turn) for turn in conclusion.turns],
         **answer,
-        "lines": drawn_lines(conclusion),
+        "lines": list(drawn_lines(conclusion.answer.groups).values()),
     }
-
-
-def drawn_lines(conclusion: Conclusion) -> list[list[str]]:
-    """The lines: maximal sets of groups none of which is shown to differ from another, each in order of mean."""
-    known = sorted((g for g in conclusion.answer.groups if g.mean is not None), key=lambda g: (g.mean, g.label))
-    letters: dict[str, list[str]] = {}
-    for group in known:
-        for letter in group.letters:
-            letters.setdefault(letter, []).append(group.label)
-    return list(letters.values())
 
 
 def overview_document(rows: list[tuple[str, Conclusion | None, bool]]) -> list[dict[str, Any]]:

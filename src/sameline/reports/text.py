@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Sequence
+from decimal import Decimal
 
 LEFT, RIGHT = "<", ">"
 
@@ -44,7 +45,9 @@ def number(figure: float | None, decimals: int) -> str:
 
 def plain(figure: float | None) -> str:
     """A stated figure such as a limit or margin, with as many digits as it was stated with."""
-    return "–" if figure is None else f"{figure:.12g}".replace("-", "\N{MINUS SIGN}")
+    if figure is None:
+        return "–"
+    return format(Decimal(f"{figure:.12g}"), "f").replace("-", "\N{MINUS SIGN}")
 
 
 def interval(lower: float | None, upper: float | None, decimals: int) -> str:
