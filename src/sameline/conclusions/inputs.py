@@ -31,6 +31,7 @@ class Value:
         censored: whether only a bound is known.
         excluded: the cause, if it is set aside.
         before: whether it was recorded before the comparison's revision was stated.
+        session: label of the occasion on which it was tested; a run without one is an occasion of its own.
     """
 
     group: str
@@ -41,6 +42,7 @@ class Value:
     censored: bool
     excluded: str | None
     before: bool
+    session: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,7 +84,8 @@ def gather(reading: Reading, revision: Revision) -> Inputs:
         if revision.tested_from is None or m.tested_at >= revision.tested_from
     ]
     order = revision.groups if revision.groups is not None else _with_values(scope, found)
-    group_code = codes_of(reading.connection, revision.grouping, order)
+    named = order if revision.control is None else (*order, revision.control)
+    group_code = codes_of(reading.connection, revision.grouping, named)
     batch_code = codes_of(reading.connection, "batch", {m.batch for m in found})
     values = tuple(
         Value(
@@ -94,6 +97,7 @@ def gather(reading: Reading, revision: Revision) -> Inputs:
             censored=m.qualifier is not None,
             excluded=m.excluded,
             before=m.entry < revision.entry,
+            session=m.session or f"run {m.run}",
         )
         for m in found
     )
