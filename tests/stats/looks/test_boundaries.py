@@ -7,7 +7,7 @@ import pytest
 from scipy import stats
 
 from sameline.errors import StatsError
-from sameline.stats.looks.boundaries import History, next_boundaries
+from sameline.stats.looks.boundaries import History, foreseen_boundaries, next_boundaries
 from sameline.stats.looks.spending import rate_that_spends, spent
 from sameline.stats.studentized_range import studentized_range_isf
 
@@ -74,13 +74,13 @@ def test_spending_gives_the_published_boundaries(spending, published):
     done = []
     for look in range(1, 6):
         history = History(TWO[:look], tuple(done), known_spread=True)
-        done.append(next_boundaries(history, (0.05,), spending, ((look - 1) / 5, look / 5), draws=400_000, seed=1))
+        done.append(next_boundaries(history, (0.05,), spending, ((look - 1) / 5, look / 5), draws=1_000_000, seed=1))
     found = [edge / math.sqrt(2) for (edge,) in done]
     assert found[0] == pytest.approx(published[0], abs=6e-4)  # by the exact tail or by simulation
     assert found == pytest.approx(published, abs=0.012)
     increments = np.diff([0.0, *(spent(spending, look / 5, 0.05) for look in range(1, 6))])
     chances = crossing_chances(found)
-    assert chances == pytest.approx(increments, abs=3.5 * math.sqrt(0.05 / 400_000))
+    assert chances == pytest.approx(increments, abs=4 * math.sqrt(0.02 / 1_000_000))
 
 
 @pytest.mark.parametrize("n", [(5, 5, 5, 5), (9, 3, 4, 2)])
@@ -97,6 +97,15 @@ def test_the_same_seed_gives_the_same_boundary_and_a_group_may_come_late():
     first = next_boundaries(history, (0.05,), "pocock", (0.3, 0.7), draws=50_000, seed=9)
     assert first == next_boundaries(history, (0.05,), "pocock", (0.3, 0.7), draws=50_000, seed=9)
     assert first != next_boundaries(history, (0.05,), "pocock", (0.3, 0.7), draws=50_000, seed=10)
+
+
+def test_a_foreseen_plan_is_the_plan_look_by_look():
+    n, fractions, done = ((3, 3, 3), (6, 6, 6), (9, 9, 9)), (0.3, 0.7, 1.0), []
+    for look in range(3):
+        history = History(n[: look + 1], tuple(done))
+        step = ((0.0, *fractions)[look], fractions[look])
+        done.append(next_boundaries(history, (0.05,), "pocock", step, draws=50_000, seed=3))
+    assert foreseen_boundaries(n, 0.05, "pocock", fractions, draws=50_000, seed=3) == tuple(edge for (edge,) in done)
 
 
 def test_no_boundary_without_degrees_of_freedom_or_two_groups():

@@ -6,7 +6,7 @@ and the state of the look before:
 - `judge_open(UnitMeans, ...)`: no end. E-values of unit means with a pooled variance, closed testing over partitions.
   EXACT at all looks together for independent normal units with one spread.
 - `judge_planned(UnitMeans, Plan, ...)`: a stated final amount of data, any looks on the way. Boundaries for the
-  studentized range. EXACT but for the seeded simulation of the boundary (relative standard error about 0.001).
+  studentized range. EXACT but for the seeded simulation of the boundary (standard error 0.00015 of the error rate).
 - `judge_single(UnitMeans, units, ...)`: one look at a stated amount. EXACT (Tukey-Kramer, Dunnett).
 - `judge_union(Contrasts, ...)`: any procedure, unequal spread, nested fits. The sharing over looks is EXACT, the
   p-value of each look is as good as the procedure: approximate for Games-Howell, Kenward-Roger and the like.
