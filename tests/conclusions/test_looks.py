@@ -309,6 +309,38 @@ def test_one_run_a_batch_is_undecided_unless_a_known_spread_may_be_used(lab):
     assert not lab.verify().findings
 
 
+def test_what_the_batches_of_a_session_share_is_taken_out_of_their_differences(lab):
+    """The day's own deviation is far larger than the difference: only within sessions can it be seen."""
+    for name, sessions in (("plain", False), ("crossed", True)):
+        lab.compare(statement(name, groups=("B1", "B2"), sessions=sessions, looks="single", final_units=12, **NESTED))
+    days = np.random.default_rng(15).normal(0.0, 3.0, 6)
+    wobble = noise(16, 6, groups=2, sd=0.1)
+    for day, (shift, (one, other)) in enumerate(zip(days, wobble, strict=True), 1):
+        texts = [(f"{x - 0.05:.2f}", f"{x + 0.05:.2f}") for x in (one + shift, other + shift + 1.0)]
+        drafts = [run(b, day, *t, session=f"day {day}") for b, t in zip(("B1", "B2"), texts, strict=True)]
+        lab.record(drafts)
+    plain, crossed = (pair(lab.conclusion(name), "B1", "B2") for name in ("plain", "crossed"))
+    assert plain.differs is False
+    assert crossed.differs is True
+    assert crossed.difference == pytest.approx(plain.difference, abs=1e-9)
+    assert crossed.standard_error < plain.standard_error / 5
+    assert any(c.level == "session" for c in lab.conclusion("crossed").answer.components)
+    assert not lab.verify().findings
+
+
+def test_a_window_finds_a_late_change_that_the_whole_record_dilutes(lab):
+    for name, window in (("whole", None), ("windows", 24)):
+        lab.compare(statement(name, groups=("B1", "B2"), window_units=window, **NESTED))
+    means = noise(17, 18, groups=2) + np.where(np.arange(18)[:, None] >= 12, [0.0, 4.0], [0.0, 0.0])
+    for day, row in enumerate(means, 1):
+        session(lab, day, *row, batches=("B1", "B2"))
+    windows = lab.conclusion("windows")
+    assert set(json.loads(windows.answer.looks_state)["windows"]) == {"1", "2"}
+    assert pair(windows, "B1", "B2").p_value < pair(lab.conclusion("whole"), "B1", "B2").p_value
+    assert any("window 2" in c.text for c in windows.answer.cautions)
+    assert not lab.verify().findings
+
+
 @pytest.mark.parametrize(
     ("change", "word"),
     [
@@ -321,6 +353,10 @@ def test_one_run_a_batch_is_undecided_unless_a_known_spread_may_be_used(lab):
         ({"looks": "single", "final_units": 2}, "three or more"),
         ({"control": "B1", "procedure": "dunnett", "alternative": "less"}, "single"),
         ({"known_spread": True, "model": "pooled"}, "known spread"),
+        ({"sessions": True, "model": "pooled"}, "sessions"),
+        ({"window_units": 12, "groups": ()}, "listed groups"),
+        ({"window_units": 12, "looks": "single"}, "open looks"),
+        ({"window_units": 4}, "too short"),
     ],
 )
 def test_a_statement_of_looks_that_cannot_be_meant_is_refused(lab, change, word):

@@ -73,6 +73,12 @@ def compare(
         bool,
         typer.Option("--known-spread", help="Where batches have one run each, use other batches' run-to-run spread."),
     ] = False,
+    sessions: Annotated[
+        bool, typer.Option("--sessions", help="Take out of the differences what the batches of one session share.")
+    ] = False,
+    window: Annotated[
+        int | None, typer.Option(help="With open looks: evidence also starts anew every so many units.")
+    ] = None,
     reason: MaybeReasonOption = None,
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
@@ -104,6 +110,8 @@ def compare(
                 final_units=units,
                 spending=spending,
                 known_spread=known_spread,
+                sessions=sessions,
+                window_units=window,
             ),
             model=model,
             procedure=procedure,

@@ -14,7 +14,7 @@ from importlib.metadata import version
 from typing import TYPE_CHECKING
 
 from sameline.conclusions.judged import GroupFigures, Judged, finite, sd
-from sameline.conclusions.looks import Looking, over_all_looks
+from sameline.conclusions.looking import Looking, over_all_looks
 from sameline.errors import StatsError
 from sameline.records.answers import CautionAnswer, ComponentAnswer, GlobalTest, PairAnswer
 from sameline.version import __version__
@@ -43,11 +43,19 @@ def engine() -> str:
 
 @dataclass(frozen=True, slots=True)
 class Unit:
-    """One unit of evidence: the group it belongs to, its mean, and how many values the mean is of."""
+    """One unit of evidence.
+
+    Attributes:
+        group: the group it belongs to.
+        value: its mean.
+        values: how many values the mean is of.
+        place: its place in the order of recording, from 0, those set aside counted too.
+    """
 
     group: str
     value: float
     values: int
+    place: int
 
 
 def judge(revision: Revision, inputs: Inputs, past: Past) -> Judged:
@@ -68,18 +76,23 @@ def judge(revision: Revision, inputs: Inputs, past: Past) -> Judged:
 def units_of(revision: Revision, inputs: Inputs) -> tuple[Unit, ...]:
     """The units of evidence, group by group: what the model takes as independent."""
     kind = ("run" if revision.grouping == "batch" else "batch") if revision.model == "nested" else revision.unit
-    return tuple(_grouped(kind, _in_order(inputs)))
+    places = {key: at for at, key in enumerate(dict.fromkeys(_key(kind, v) for v in inputs.values))}
+    gathered: dict[UnitKey, list[Value]] = {}
+    for v in _in_order(inputs):
+        gathered.setdefault(_key(kind, v), []).append(v)
+    return tuple(
+        Unit(own[0].group, math.fsum(v.value for v in own) / len(own), len(own), places[key])
+        for key, own in gathered.items()
+    )
 
 
-def _grouped(kind: str, values: list[Value]) -> Iterator[Unit]:
+UnitKey = tuple[str, str | int, int]
+
+
+def _key(kind: str, v: Value) -> UnitKey:
     if kind == "replicate":
-        yield from (Unit(v.group, v.value, 1) for v in values)
-        return
-    gathered: dict[tuple[str, str | int], list[float]] = {}
-    for v in values:
-        gathered.setdefault((v.group, v.batch if kind == "batch" else v.run), []).append(v.value)
-    for (group, _), own in gathered.items():
-        yield Unit(group, math.fsum(own) / len(own), len(own))
+        return v.group, v.run, v.replicate
+    return (v.group, v.batch, 0) if kind == "batch" else (v.group, v.run, 0)
 
 
 def _in_order(inputs: Inputs) -> list[Value]:
@@ -180,6 +193,7 @@ def _nested(revision: Revision, inputs: Inputs) -> Judged:
         [v.group for v in values],
         None if revision.grouping == "batch" else [v.batch for v in values],
         [v.run for v in values],
+        sessions=[v.session for v in values] if revision.sessions else None,
         known=_known(inputs),
     )
     means = fit.means(revision.alpha)

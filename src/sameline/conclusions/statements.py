@@ -6,6 +6,7 @@ import difflib
 import math
 from dataclasses import replace
 
+from sameline.conclusions.looking import has_exact_form
 from sameline.errors import CallError
 from sameline.records.comparisons import GROUPINGS, Statement
 
@@ -71,6 +72,25 @@ def check(statement: Statement) -> None:
     if statement.known_spread and (statement.model != "nested" or statement.looks == "planned"):
         raise CallError(
             "a known spread goes with the nested model and open or single looks", advice="leave one of them out"
+        )
+
+    if statement.sessions and (statement.model != "nested" or statement.looks == "planned"):
+        raise CallError("sessions go with the nested model and open or single looks", advice="leave one of them out")
+    _check_windows(statement)
+
+
+def _check_windows(statement: Statement) -> None:
+    if statement.window_units is None:
+        return
+    if statement.looks != "open" or not statement.groups or not has_exact_form(statement):
+        raise CallError(
+            "windows go with open looks at listed groups: batches on the nested model, or any on the pooled one",
+            advice="leave out --window",
+        )
+    if statement.window_units < 2 * len(statement.groups):
+        raise CallError(
+            f"a window of {statement.window_units} units is too short for {len(statement.groups)} groups",
+            advice="give at least two units a group",
         )
 
 

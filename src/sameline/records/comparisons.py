@@ -39,6 +39,8 @@ class Statement:
         final_units: the amount of data planned for, in units a group, with "planned" and "single".
         spending: how a plan spends its error rate over looks.
         known_spread: whether the run-to-run spread of other batches may be used where these have one run each.
+        sessions: whether what the batches of one session share is taken out of their differences.
+        window_units: with open looks, evidence also starts anew every so many units; None for no windows.
     """
 
     name: str
@@ -59,6 +61,8 @@ class Statement:
     final_units: int | None = None
     spending: str | None = None
     known_spread: bool = False
+    sessions: bool = False
+    window_units: int | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -95,6 +99,8 @@ class Revision:
     final_units: int | None
     spending: str | None
     known_spread: bool
+    sessions: bool
+    window_units: int | None
 
 
 def state(act: Act, statement: Statement) -> int:
@@ -133,6 +139,8 @@ def state(act: Act, statement: Statement) -> int:
         final_units=statement.final_units,
         spending=statement.spending,
         known_spread=1 if statement.known_spread else None,
+        sessions=1 if statement.sessions else None,
+        window_units=statement.window_units,
         **{f"control_{statement.grouping}": control},
     )
     for place, code in enumerate(statement.groups, 1):
@@ -179,9 +187,15 @@ def _revision(connection: Connection, row: Any) -> Revision:  # noqa: ANN401 - a
         group = t.comparison_group
         query = select(group.c[row["grouping"]]).where(group.c.revision == row["id"]).order_by(group.c.place)
         listed = tuple(connection.execute(query).scalars())
-    own = {f: row[f] for f in Revision.__dataclass_fields__ if f not in {"groups", "control", "known_spread"}}
-    control = row[f"control_{row['grouping']}"]
-    return Revision(**own, groups=listed, control=control, known_spread=bool(row["known_spread"]))
+    made = {"groups", "control", "known_spread", "sessions"}
+    own = {f: row[f] for f in Revision.__dataclass_fields__ if f not in made}
+    return Revision(
+        **own,
+        groups=listed,
+        control=row[f"control_{row['grouping']}"],
+        known_spread=bool(row["known_spread"]),
+        sessions=bool(row["sessions"]),
+    )
 
 
 def effective_margin(reading: Reading, revision: Revision) -> float | None:

@@ -261,9 +261,11 @@ comparison_revision = _recorded(
     Column("final_units", Integer),
     Column("spending", Text),
     Column("known_spread", Integer),  # 1 where the run-to-run spread of other batches may be used
+    Column("sessions", Integer),  # 1 where what the batches of one session share is taken out of their differences
+    Column("window_units", Integer),  # evidence also starts anew every so many units
     UniqueConstraint("comparison", "revision"),
     CheckConstraint("grouping IN ('batch', 'material', 'supplier')", name="grouping"),
-    CheckConstraint("listed IN (0, 1) AND known_spread IN (0, 1)", name="truth"),
+    CheckConstraint("listed IN (0, 1) AND known_spread IN (0, 1) AND sessions IN (0, 1)", name="truth"),
     CheckConstraint("alpha > 0 AND alpha < 1", name="alpha"),
 )
 
