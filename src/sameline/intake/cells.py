@@ -10,15 +10,37 @@ from math import inf, isfinite
 from sameline.errors import CallError
 from sameline.intake.decimals import DecimalEvidence
 from sameline.intake.far import Far
-from sameline.intake.figures import PLAIN, Figure, NoFigure, read_figure
+from sameline.intake.figures import Figure, NoFigure, read_figure
 from sameline.intake.headings import ValueColumn
 from sameline.records.drafts import CharacteristicFacts, DraftMeasurement
 
-TABLES = 24
-"""Replicates up to this number are cached by their text."""
-_LARGEST = 50_000  # texts a replicate's table may hold; a characteristic with more does not repeat itself
+CACHED = 24
+"""Replicates up to this number are remembered by their text."""
+LARGEST = 4_000
+"""Texts that are remembered of one replicate number; a characteristic with more does not repeat itself."""
 
-Table = dict[str, DraftMeasurement]
+
+class KnownTexts:
+    """What texts of one characteristic and unit were read as, where nothing was to be said about them.
+
+    Attributes:
+        tables: for each replicate number, from 1, text -> measurement.
+        low, high: a plain figure between these needs no further look; where the unit is not the characteristic's own,
+            there is none.
+    """
+
+    __slots__ = ("high", "low", "tables")
+
+    def __init__(self) -> None:
+        self.tables: list[dict[str, DraftMeasurement]] = [{} for _ in range(CACHED)]
+        self.low, self.high = inf, -inf
+
+    def keep(self, text: str, measurement: DraftMeasurement) -> None:
+        """Remember a reading."""
+        if 1 <= measurement.replicate <= CACHED:
+            table = self.tables[measurement.replicate - 1]
+            if len(table) < LARGEST:
+                table[text] = measurement
 
 
 @dataclass(frozen=True, slots=True)
@@ -45,14 +67,16 @@ class Cells:
         self.facts = facts
         self._evidence = evidence
         self._far = Far(facts)
-        self._tables: dict[str | None, list[Table]] = {}
+        self._known: dict[str | None, KnownTexts] = {}
 
-    def tables(self, column: ValueColumn) -> list[Table]:
-        """For each replicate number (from 1) what its texts were read as, for figures in this column's unit."""
-        tables = self._tables.get(column.unit)
-        if tables is None:
-            tables = self._tables[column.unit] = [{} for _ in range(TABLES)]
-        return tables
+    def known(self, column: ValueColumn) -> KnownTexts:
+        """What texts under this column were read as."""
+        known = self._known.get(column.unit)
+        if known is None:
+            known = self._known[column.unit] = KnownTexts()
+            if column.unit is None or (self.facts is not None and _same(column.unit, self.facts.unit)):
+                known.low, known.high = self._far.low, self._far.high
+        return known
 
     def read(self, text: str, row: int, column: ValueColumn) -> Reading | NoFigure:
         """The figure in this cell, in the characteristic's unit."""
@@ -79,32 +103,6 @@ class Cells:
         value = to_own(figure.number)
         doubt = None if figure.qualifier else self._far.doubt(figure.number, value, to_own)
         return Reading(figure.text, value, figure.qualifier, None if own else unit, doubt, certain)
-
-    def plain(self, text: str, number: int, column: ValueColumn) -> DraftMeasurement | None:
-        """The fast path: a plain figure in the characteristic's own unit that nothing is to be said about, else None.
-
-        It must give what `read` gives (a test compares them).
-        """
-        if not self._evidence.settled or (column.unit is not None and not self._is_own(column.unit)):
-            return None
-        if not PLAIN.fullmatch(text):
-            return None
-        value = float(text)
-        if not self._far.low <= value <= self._far.high:
-            return None
-        measurement = DraftMeasurement(number, text, value)
-        self.keep(text, measurement, column)
-        return measurement
-
-    def keep(self, text: str, measurement: DraftMeasurement, column: ValueColumn) -> None:
-        """Remember a reading that nothing is to be said about, so that the same text need not be read again."""
-        if 1 <= measurement.replicate <= TABLES:
-            table = self.tables(column)[measurement.replicate - 1]
-            if len(table) < _LARGEST:
-                table[text] = measurement
-
-    def _is_own(self, unit: str) -> bool:
-        return self.facts is not None and _same(unit, self.facts.unit)
 
 
 def _same(first: str, second: str) -> bool:

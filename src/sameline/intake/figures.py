@@ -178,7 +178,7 @@ def _with_groups(grouped: str, sign: DecimalSign, decimal: DecimalSign | None) -
     other = "," if sign == "." else "."
     whole, _, rest = grouped.partition(sign)
     head, *groups = whole.split(other)
-    if not 1 <= len(head) <= 3 or any(len(group) != 3 for group in groups) or other in rest:
+    if not 1 <= len(head) <= 3 or any(len(group) != 3 for group in groups) or not (rest + "0").isdigit():
         return "has separators where no thousands are"
     return f"{head}{''.join(groups)}.{rest or '0'}", sign, None
 
