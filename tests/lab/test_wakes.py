@@ -59,6 +59,14 @@ def put_back(lab: Lab, **what: int) -> Outcome:
     return lab.restore(reason="not worn", **what)
 
 
+def last_entry(lab: Lab, act: str) -> int:
+    return [entry.number for entry in lab.trail() if entry.act == act][-1]
+
+
+def first_entry(lab: Lab, act: str) -> int:
+    return next(entry.number for entry in lab.trail() if entry.act == act)
+
+
 def amend(lab: Lab, number: int) -> Outcome:
     return lab.amend(lab.find_measurements(number, 1)[0], laboratory.replicate(1, "71.0"), reason="a slip")
 
@@ -82,6 +90,9 @@ CASES: list[tuple[str, str, Callable[[Lab], Outcome], frozenset[str]]] = [
     ),
     ("amend", "an early value", lambda lab: amend(lab, 1), EARLY),
     ("amend", "a late value", lambda lab: amend(lab, 2), LATE),
+    ("amend", "a run's batch", lambda lab: lab.amend_run(2, batch="B2", reason="x"), LATE | {"alder", "one and two"}),
+    ("reverse", "an early run", lambda lab: lab.reverse(first_entry(lab, "log"), reason="x"), EARLY),
+    ("reverse", "a late run", lambda lab: lab.reverse(last_entry(lab, "log"), reason="x"), LATE),
     ("exclude", "a replicate", lambda lab: exclude(lab, measurement=1), EARLY),
     ("exclude", "a run", lambda lab: exclude(lab, run=2), LATE),
     ("exclude", "a batch", lambda lab: exclude(lab, batch=3), LATE),

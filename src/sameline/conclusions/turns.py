@@ -17,6 +17,7 @@ _BECAUSE = {
     "amend": AMENDMENT,
     "exclude": AMENDMENT,
     "restore": AMENDMENT,
+    "reverse": AMENDMENT,
     "compare": CHANGED,
     "restate": RESTATED,
 }

@@ -12,9 +12,10 @@ from typing import TYPE_CHECKING, Any, Self
 from sameline.conclusions.conclude import bring_up_to_date
 from sameline.conclusions.statements import check
 from sameline.errors import CallError, FindingsError
+from sameline.lab.corrections import touched_by_amending_runs, touched_by_reversal
 from sameline.lab.outcomes import Outcome, Taken, by_source, refuse
 from sameline.lab.reads import Reads
-from sameline.records import amendments, comparisons, registry, runs, scope
+from sameline.records import amendments, comparisons, registry, reversal, run_particulars, runs, scope
 from sameline.records import tables as t
 from sameline.records.moments import read_zone, utc_text
 from sameline.records.store import Reading, Store
@@ -128,6 +129,32 @@ class Lab(Reads):
         with self._act("amend", reason) as act:
             amendments.amend_value(act, measurement, value)
             self._touch_measurements(act, [measurement])
+        return self._after(act.number)
+
+    def amend_run(self, run: int, *, reason: str, **changes: str | None) -> Outcome:
+        """Correct a run's batch, moment, analyst, instrument (by code), session or note; the original stays readable.
+
+        Args:
+            run: the run's number.
+            reason: why.
+            changes: of `sameline.records.run_particulars.FIELDS`; `tested_at` in UTC, ISO 8601 (see `Reads.moment`).
+        """
+        with self._act("amend", reason) as act:
+            run_particulars.amend_run(act, run, **changes)
+            scope.touch(act, touched_by_amending_runs(act, [run]))
+        return self._after(act.number)
+
+    def reverse(self, entry: int, *, reason: str, cause: str = "other stated cause") -> Outcome:
+        """Reverse a whole entry, such as a file taken in: see `sameline.records.reversal`.
+
+        Args:
+            entry: the entry's number.
+            reason: why.
+            cause: the assignable cause for which runs that it recorded are set aside.
+        """
+        with self._act("reverse", reason) as act:
+            reversal.reverse(act, entry, cause)
+            scope.touch(act, touched_by_reversal(act))
         return self._after(act.number)
 
     def exclude(self, cause: str, *, reason: str, **what: int) -> Outcome:

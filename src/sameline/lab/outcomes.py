@@ -21,6 +21,7 @@ WAKES: dict[str, str] = {
     "amend": "the comparisons in whose scope the amended run fell, and falls now",
     "exclude": "the comparisons in whose scope what is set aside falls",
     "restore": "the comparisons in whose scope what is put back falls",
+    "reverse": "the comparisons that the reversed entry touched, or would touch now",
     "compare": "the comparison that is stated",
     "restate batch": "the comparisons in whose scope its runs fell, and fall now",
     "restate characteristic": "the comparisons that take their margin from it",
