@@ -5,8 +5,8 @@
 
 Every figure is the median of at least five runs, ours and the peer's in turn, in processor time of one thread, which
 on an idle machine is the time by the clock. Before each of our runs all tables kept from earlier runs are dropped, but
-for the row about a second call. Peers give the same figures: all pairs' tests with their simultaneous intervals. If R is
-at hand its TukeyHSD is timed too.
+for the row about a second call. Peers give the same figures: all pairs' tests with their simultaneous intervals. If R
+is at hand its TukeyHSD is timed too.
 """
 
 from __future__ import annotations

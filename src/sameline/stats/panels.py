@@ -44,7 +44,7 @@ class Panels:
     powers: Array
 
     def __call__(self, x: Array) -> Array:
-        """Return the values at x; outside [start, end] those of the nearest end's polynomial."""
+        """Return the values at x, not below start; beyond the end those of the last panel's polynomial."""
         index, local = self._locate(x)
         value: Array = self.powers[-1].take(index)
         for row in self.powers[-2::-1]:
@@ -68,7 +68,7 @@ class Panels:
             fine_panels = round((self.turn - self.start) / self.fine)
             place = np.where(x < self.turn, place, fine_panels + (x - self.turn) / self.coarse)
         index = place.astype(np.intp)
-        np.clip(index, 0, self.powers.shape[1] - 1, out=index)
+        np.minimum(index, self.powers.shape[1] - 1, out=index)
         place -= index
         place *= 2.0
         place -= 1.0

@@ -56,6 +56,8 @@ def _log_sf_and_slope(q: Array, groups: int, df: Array) -> tuple[Array, Array]:
     """Return log P(Q > q) and its derivative by log q; arguments as `log_sf`."""
     tail = range_tail(groups)
     known = np.isinf(df)
+    if not known.any():
+        return log_mixture_and_slope(tail, q, df)
     value, slope = np.empty_like(q), np.empty_like(q)
     value[known] = tail.log_tail(q[known])
     slope[known] = _range_panels(groups).slope(np.minimum(q[known], _END)) * q[known]
@@ -86,7 +88,7 @@ def log_quantile(log_level: Array, groups: int, df: Array) -> Array:
         step = (value - log_level[active]) / slope
         y[active] -= step
         # Newton's next step is of the order of this one's square
-        active = active[np.abs(step) > 1e-8]
+        active = active[np.abs(step) > 1e-7]
         if not active.size:
             return y
     raise StatsError("the quantile's iteration did not settle", where="alpha", advice="choose a less extreme level")
