@@ -1,11 +1,13 @@
 from __future__ import annotations
 
+import dataclasses
 import datetime as dt
 import io
 import struct
 import zipfile
 import zlib
 from collections.abc import Callable, Sequence
+from pathlib import Path
 
 import openpyxl
 import pandas as pd
@@ -13,8 +15,10 @@ import pytest
 import xlsxwriter
 
 from sameline.intake.files import Intake, read_files
+from sameline.intake.odsfacts import decimals_in
 from sameline.intake.rawfiles import RawFile
-from sameline.intake.sheetfacts import PERCENT, shown_by
+from sameline.intake.sheetfacts import PERCENT
+from sameline.intake.xlsxfacts import shown_by
 from sameline.records.drafts import DraftMeasurement, Register
 
 HEAD = ["batch", "characteristic", "tested_at", "analyst", "replicate", "value"]
@@ -22,7 +26,7 @@ WHEN = dt.datetime(2026, 3, 4, 8, 30, 15)  # noqa: DTZ001 - a workbook's moments
 ROWS: list[list[object]] = [
     ["B-117", "TS", WHEN, "ana", 1, 12.5],
     ["B-117", "TS", WHEN, "ana", 2, 12.75],
-    ["B-121", "SET", dt.date(2026, 3, 5), None, 1, 20],
+    ["B-121", "SET", dt.date(2026, 3, 5), None, 1, 20.5],
 ]
 
 
@@ -76,7 +80,7 @@ def test_workbooks_of_every_writer_give_the_runs_of_the_same_csv(read: Read, tak
     assert intake.findings == ()
     assert intake.runs == take(text).runs
     assert intake.runs[0].tested_at == "2026-03-04T07:30:15.000000Z"
-    assert intake.runs[1].measurements == (DraftMeasurement(1, "20", 20.0),)
+    assert intake.runs[1].measurements == (DraftMeasurement(1, "20.5", 20.5),)
 
 
 def test_rows_and_columns_are_numbered_as_the_spreadsheet_shows_them(read: Read):
@@ -129,6 +133,49 @@ def test_figures_keep_the_zeros_and_the_percentages_that_their_cells_show(read: 
 )
 def test_number_formats(code: str, shown: int):
     assert shown_by(code) == shown
+
+
+@pytest.mark.parametrize(
+    ("text", "value", "decimals"),
+    [
+        ("12.50", "12.5", 2),
+        ("12,50", "12.5", 2),
+        ("1,234.50", "1234.5", 2),
+        ("1.234", "1234", 0),
+        ("1,234", "1.234", 3),
+        ("12.50%", "0.125", 2),
+        ("60", "60", 0),
+        ("12.50 MPa", "12.5", 0),
+        ("1e5", "100000", 0),
+        ("12.50", "broken", 0),
+        ("", "", 0),
+    ],
+)
+def test_decimals_that_a_cell_shows(text: str, value: str, decimals: int):
+    assert decimals_in(text, value) == decimals
+
+
+# Written by LibreOffice 7.4.7.2 with `soffice --headless --convert-to xlsx` (and `ods`) from a workbook with two lines
+# above the headings, merged cells, cells shown as 0.00 and 0.0%, a formula, a hidden sheet and a sheet of notes.
+@pytest.mark.parametrize("kind", ["xlsx", "ods"])
+def test_workbooks_that_libreoffice_wrote(register: Register, take: Callable[..., Intake], kind: str):
+    intake = read_files([Path(__file__).parent / "written_by_libreoffice" / f"results.{kind}"], register)
+    same = take(
+        "batch,characteristic,tested_at,analyst,replicate,value,unit\n,,,,,,\n,,,,,,\n"
+        "B-117,TS,2026-03-04T08:30:15,ana,1,12.50,\n"
+        "B-117,TS,2026-03-04T08:30:15,ana,2,12.75,\n"
+        "B-117,TS,2026-03-04T08:30:15,ana,3,12.60,\n"
+        "B-121,SET,2026-03-05,ben,1,12.5,\n"
+        "B-130,TS,2026-03-06T23:59:59,,1,1813,psi\n"
+        "B-130,SET,2026-03-06,,1,<0.5,\n"
+        "B-130,HA,2026-03-06,,1,60,\n"
+    )
+    assert same.findings == ()
+    assert [dataclasses.replace(run, row=None) for run in intake.runs] == [
+        dataclasses.replace(run, row=None) for run in same.runs
+    ]
+    assert [(finding.sheet, finding.question) for finding in intake.findings] == [("Notes", True)]
+    assert intake.runs[0].row == 4
 
 
 def test_merged_cells_of_codes_hold_for_all_their_rows_and_merged_values_are_refused(read: Read):

@@ -1,7 +1,7 @@
 """XLSX and ODS workbooks as tables of text.
 
 A figure in a workbook is kept as a binary number: its text here is the shortest that means the same, with the zeros
-that an XLSX cell's format shows ("12.50"), and with its sign for a percentage ("12.5%" of a cell that holds 0.125).
+that its cell shows at the end ("12.50"), and with its sign for a percentage ("12.5%" of a cell that holds 0.125).
 """
 
 from __future__ import annotations
@@ -13,10 +13,12 @@ from decimal import Decimal
 from typing import TYPE_CHECKING
 
 from sameline.intake.figures import DecimalSign
+from sameline.intake.odsfacts import ods_facts
 from sameline.intake.packed import Packed
 from sameline.intake.rawfiles import RawFile
-from sameline.intake.sheetfacts import MOST_CELLS, PERCENT, SheetFacts, ods_facts, xlsx_facts
+from sameline.intake.sheetfacts import MOST_CELLS, PERCENT, SheetFacts
 from sameline.intake.tables import Row, UnreadableError
+from sameline.intake.xlsxfacts import xlsx_facts
 
 if TYPE_CHECKING:
     from python_calamine import CalamineSheet
@@ -114,7 +116,7 @@ def _figure(value: float, shown: int) -> str:
     percent, decimals = shown >= PERCENT, shown % PERCENT
     exact = (exact.scaleb(2) if percent else exact).normalize()
     if not -15 <= exact.adjusted() <= 15:
-        return repr(value) + ("" if not percent else " (as %)")
+        return f"{exact}%" if percent else repr(value)
     text = f"{exact:f}"
     whole, _, rest = text.partition(".")
     rest = rest.ljust(decimals, "0")
