@@ -15,7 +15,7 @@ from hypothesis import strategies as st
 
 from sameline.errors import StatsError
 from sameline.stats.noncentral_t import exceedance, noncentrality
-from sameline.stats.sizes import Design, detectable_differences, power_curve, size_curve, size_for
+from sameline.stats.sizes import Design, detectable_differences, power_curve, run_mean_sd, size_curve, size_for
 from sameline.stats.studentized_range import studentized_range_isf
 
 
@@ -104,6 +104,14 @@ def test_size_depends_on_the_ratio_only():
     assert size_for(Design(4), 0.02, 0.01).n == size_for(Design(4), 2000.0, 1000.0).n
 
 
+def test_more_replicates_cannot_replace_runs():
+    assert run_mean_sd(0.3, 0.4, 1) == pytest.approx(0.5)
+    assert run_mean_sd(0.0, 0.4, 4) == pytest.approx(0.2)
+    runs = [size_for(Design(4), 1.0, run_mean_sd(0.6, 0.5, m)).n for m in (1, 2, 5, 1000)]
+    assert runs == sorted(runs, reverse=True)
+    assert runs[-1] == size_for(Design(4), 1.0, 0.6).n
+
+
 @pytest.mark.parametrize("design", [Design(4), Design(4, "dunnett"), Design(4, "dunnett", alternative="greater")])
 def test_detectable_difference_has_the_wanted_power(design: Design):
     found = detectable_differences(design, [7, 7, 7, 7], 0.5, power=0.9)
@@ -134,6 +142,9 @@ def test_detectable_difference_is_smaller_between_larger_groups():
         (lambda: size_for(Design(3), 1.0, 1.0, power=0.04), "power"),
         (lambda: size_for(Design(3), 1.0, 1.0, power=1.0), "power"),
         (lambda: size_for(Design(3), 1e-6, 1.0), "more than"),
+        (lambda: run_mean_sd(-0.1, 0.5, 2), "at least 0"),
+        (lambda: run_mean_sd(0.1, 0.5, 0), "replicate"),
+        (lambda: run_mean_sd(0.0, 0.0, 2), "above 0"),
         (lambda: power_curve(Design(3), 1, [1.0], 1.0), "degrees of freedom"),
         (lambda: power_curve(Design(3), 5, [-1.0], 1.0), "at least 0"),
         (lambda: detectable_differences(Design(3), [1, 1, 1], 1.0), "degrees of freedom"),

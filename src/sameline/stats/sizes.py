@@ -6,7 +6,7 @@ count for a two-sided test. Tukey's critical value is that of the studentized ra
 normal values with one standard deviation in all groups.
 
 A value is an independent unit: a replicate where replicates are independent evidence about the group, a run's mean
-where runs are, with `sd` the standard deviation of such means.
+where runs are, with `sd` the standard deviation of such means (`run_mean_sd`).
 
 References: J. W. Tukey, The problem of multiple comparisons, 1953; C. W. Dunnett, J. Am. Statist. Assoc. 50, 1955,
 1096-1121 and Biometrics 20, 1964, 482-491 (the control's share: most power a value with about n_0 = n·sqrt(m)).
@@ -116,6 +116,24 @@ class Size:
     critical: float
     power: float
     power_below: float | None
+
+
+def run_mean_sd(run_sd: float, replicate_sd: float, replicates: int) -> float:
+    """Return the standard deviation of a run's mean, for sizes counted in runs: sqrt(run_sd² + replicate_sd²/m).
+
+    Args:
+        run_sd: standard deviation between runs, at least 0, in the characteristic's unit.
+        replicate_sd: standard deviation of replicates within a run, at least 0.
+        replicates: replicates m in each run, at least 1.
+
+    Raises:
+        StatsError: a figure out of range, or no deviation at all.
+    """
+    if not (0.0 <= run_sd < math.inf and 0.0 <= replicate_sd < math.inf):
+        raise StatsError("a standard deviation must be at least 0", where="run_sd")
+    if replicates != int(replicates) or replicates < 1:
+        raise StatsError(f"a run has at least one replicate, got {replicates}", where="replicates")
+    return _positive(math.hypot(run_sd, replicate_sd / math.sqrt(replicates)), "the standard deviation")
 
 
 def size_for(design: Design, difference: float, sd: float, power: float = 0.8) -> Size:
