@@ -244,6 +244,7 @@ def test_columns_that_are_not_ours_are_asked_about(take: Take):
         (b"\xff\xfe\x00\xd8", "the file begins as UTF-16 and is not"),
         (HEAD + '"B-117,TS,2026-03-04,,,,1,12\n', "line 2 cannot be taken apart into cells: unexpected end of data"),
         (HEAD + "B" * 200_000, "line 2 cannot be taken apart into cells: field larger than field limit (131072)"),
+        (HEAD + "," * 3_000_000, "a line is longer than 1,048,576 bytes"),
         (b"%PDF-1.7\n", "this is a PDF document, not a table"),
         (b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1", "this is an old or a password-protected workbook, not a table"),
     ],

@@ -14,6 +14,7 @@ from sameline.intake.headings import (
     layout_of,
     own_map,
     strange,
+    trimmed,
 )
 from sameline.intake.nearest import Nearest, did_you_mean
 from sameline.intake.tables import Row, Table, UnreadableError, head
@@ -56,7 +57,7 @@ def choose_layout(ways: Sequence[Table], maps: Sequence[HeadingMap], book: Findi
 def _own(rows: list[Row], book: FindingBook) -> Layout | None:
     """The layout of a table with our own headings."""
     for number, row in rows:
-        headings = _trimmed(row)
+        headings = trimmed(row)
         form = own_map(headings)
         if form.missing():
             continue
@@ -67,19 +68,13 @@ def _own(rows: list[Row], book: FindingBook) -> Layout | None:
                     number, heading, heading, f"the heading {heading!r} is there more than once", "keep one of them"
                 )
                 return None
+        nearest = Nearest(FIELDS[:-1])
         for heading in strange(headings):
-            near = did_you_mean(Nearest(FIELDS[:-1]).to(fold(heading)))
+            near = did_you_mean(nearest.to(fold(heading)))
             problem = f"the column {heading!r} is none of ours"
             book.add(number, heading, heading, problem, near or "it would not be read", question=True)
         return layout_of(form, number, headings)
     return None
-
-
-def _trimmed(row: list[str]) -> list[str]:
-    """The headings without empty ones at the end."""
-    while row and not row[-1].strip():
-        row = row[:-1]
-    return row
 
 
 def _fitting(rows: list[Row], maps: Sequence[HeadingMap]) -> list[tuple[HeadingMap, int, list[str]]]:
@@ -87,7 +82,7 @@ def _fitting(rows: list[Row], maps: Sequence[HeadingMap]) -> list[tuple[HeadingM
     for form in maps:
         place = next(((number, row) for number, row in rows if form.fits(row)), None)
         if place is not None:
-            fitting.append((form, place[0], _trimmed(place[1])))
+            fitting.append((form, place[0], trimmed(place[1])))
     most = max((len(form.columns) for form, _, _ in fitting), default=0)
     return [fit for fit in fitting if len(fit[0].columns) == most]
 

@@ -172,6 +172,12 @@ def fold(heading: str) -> str:
     return re.sub(r"[\s_\u00a0]+", "_", heading.replace("\ufeff", "").strip()).strip("_").casefold()
 
 
+def trimmed(headings: Sequence[str]) -> list[str]:
+    """The headings without empty ones at the end."""
+    last = next((place for place in range(len(headings), 0, -1) if headings[place - 1].strip()), 0)
+    return list(headings[:last])
+
+
 def own_map(headings: Sequence[str]) -> HeadingMap:
     """The map of a file with our own headings: what is not ours is passed over (and reported by `strange`)."""
     columns = []

@@ -14,7 +14,7 @@ from pathlib import Path
 from sameline.errors import CallError
 from sameline.intake.columns import Column, Known, describe
 from sameline.intake.conventions import conventions
-from sameline.intake.headings import HeadingMap, MapColumn, fold
+from sameline.intake.headings import HeadingMap, MapColumn, fold, trimmed
 from sameline.intake.opening import open_tables
 from sameline.intake.rawfiles import SIZE_LIMIT, RawFile, load
 from sameline.intake.tables import HEAD, Row, Table, UnreadableError, explaining
@@ -148,7 +148,7 @@ def _seen(table: Table, register: Register) -> _Seen | None:
         return None
     score, number, headings = max(scored, key=lambda one: one[:2])
     body = [(place, row) for place, row in rows if place > -number]
-    return _Seen(table, -number, _trimmed(headings), body, score) if body else None
+    return _Seen(table, -number, trimmed(headings), body, score) if body else None
 
 
 def _likeness(row: Sequence[str], words: frozenset[str]) -> float:
@@ -162,12 +162,6 @@ def _likeness(row: Sequence[str], words: frozenset[str]) -> float:
 def _parts(heading: str) -> list[str]:
     folded = fold(heading)
     return [folded, *folded.replace("/", "_").replace("(", "_").replace("[", "_").split("_")]
-
-
-def _trimmed(row: list[str]) -> list[str]:
-    while row and not row[-1].strip():
-        row = row[:-1]
-    return row
 
 
 def _constants(columns: Sequence[Column], register: Register) -> tuple[tuple[str, str], ...]:

@@ -7,6 +7,7 @@ from collections.abc import Iterable, Mapping
 from sameline.intake.findings import FindingBook, row_ranges
 from sameline.intake.gather import Group, Identity, Place
 from sameline.intake.headings import Layout
+from sameline.intake.slips import slipped
 from sameline.records.drafts import DraftMeasurement, DraftRun, Register
 
 _LOOKED_AT = 1_000  # replicate numbers among which gaps are looked for
@@ -76,6 +77,9 @@ class RunMaker:
             self._gaps(group)
         if len(measurements) >= 4:
             self._twice(group, measurements)
+        if group.cells.facts is not None and group.cells.facts.mean is None:
+            for measurement, problem in slipped(measurements):
+                self._ask_slip(group, measurement, problem)
         faulty = self._recorded(group, identity) | self._elsewhere(group, identity)
         if faulty or group.faulty or not measurements:
             return None
@@ -84,6 +88,14 @@ class RunMaker:
             batch, characteristic, tested_at, tuple(measurements), analyst, instrument, session,
             self._notes.get(group), group.first,
         )  # fmt: skip
+
+    def _ask_slip(self, group: Group, measurement: DraftMeasurement, problem: str) -> None:
+        rows = group.rows()
+        place = group.measurements.index(measurement)
+        one_each = len(rows) == len(group.measurements) and group.ordered
+        row = rows[place] if one_each else group.first
+        heading = self._layout.values[0].heading if len(self._layout.values) == 1 else None
+        self._book.add(row, heading, measurement.text, problem, "did the decimal point slip?", question=True)
 
     def _gaps(self, group: Group) -> None:
         """Replicate numbers that are left out are asked about; those whose cell says "n/a" have been already."""

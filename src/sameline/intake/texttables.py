@@ -77,10 +77,18 @@ def text_tables(raw: RawFile, encodings: tuple[str, ...] = ()) -> list[TextTable
     data, encoding = _plain(raw.data, encodings)
     if not data.strip(b" \t\r\n,;|\xef\xbb\xbf"):
         raise UnreadableError("the file is empty", "write headings in the first row and the results below")
+    if _has_endless_line(data):
+        raise UnreadableError(f"a line is longer than {_STEP:,} bytes", "end each result with a line break")
     start = data[:_STEP].decode(encoding, errors="replace").splitlines()[:20]
     count = {mark: max((line.count(mark) for line in start), default=0) for mark in DELIMITERS}
     used = sorted((mark for mark in DELIMITERS if count[mark]), key=lambda mark: -count[mark]) or [","]
     return [TextTable(raw.name, data, encoding, mark) for mark in used]
+
+
+def _has_endless_line(data: bytes) -> bool:
+    """Whether some line is so long that it is no row of a table: one row must not fill the memory."""
+    places = range(0, len(data) - _STEP, _STEP)
+    return any(data.find(b"\n", at, at + _STEP) < 0 and data.find(b"\r", at, at + _STEP) < 0 for at in places)
 
 
 def _plain(data: bytes, encodings: tuple[str, ...]) -> tuple[bytes, str]:
