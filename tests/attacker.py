@@ -109,6 +109,15 @@ def rehash_all(connection: Connection) -> None:
     )
 
 
+def forget(connection: Connection, table: Table) -> None:
+    """Take all rows of a table away, and out of what the entries say they wrote."""
+    with without_triggers(connection, table.name):
+        connection.execute(delete(table))
+    for number, text in connection.execute(select(t.entry.c.number, t.entry.c.rows)).all():
+        kept = [part for part in json.loads(text) if part["table"] != table.name]
+        write(connection, t.entry, number, rows=json.dumps(kept, separators=(",", ":"), sort_keys=True))
+
+
 def _rehashed(connection: Connection, table: Table, part: dict[str, Any]) -> TableRows:
     ids = range(part["first"], part["first"] + part["count"])
     for number in ids:

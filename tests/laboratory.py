@@ -7,7 +7,10 @@ import hashlib
 from dataclasses import replace
 from typing import Any
 
+from cryptography.hazmat.primitives.asymmetric.ed25519 import Ed25519PrivateKey
+
 from sameline.lab import Lab, make_lab, open_lab
+from sameline.ledger.signatures import SigningKey, key_id
 from sameline.records.comparisons import Statement
 from sameline.records.drafts import DraftMeasurement, DraftRun, SourceFile
 from sameline.records.moments import utc_text
@@ -54,6 +57,11 @@ def source(name: str) -> SourceFile:
     return SourceFile(name, hashlib.sha256(name.encode()).hexdigest(), len(name))
 
 
+def signing_key(number: int) -> SigningKey:
+    """A private key, always the same one of this number."""
+    return SigningKey(Ed25519PrivateKey.from_private_bytes(bytes([number]) * 32))
+
+
 def statement(name: str, **other: Any) -> Statement:  # noqa: ANN401 - any of a statement's parts
     """A comparison of hardness between batches on the replicates, unless told otherwise: the quickest to compute."""
     plain = Statement(name, "hardness", "batch", model="pooled", procedure="tukey-kramer", unit="replicate")
@@ -98,4 +106,11 @@ def small(store: str, clock: Clock | None = None) -> Lab:
         ben.restate("characteristic", "hardness", margin=1.5, reason="the new drawing")
         ben.restate("batch", "B4", supplier="ALDER", reason="the delivery note says so")
         ben.compare(statement("batches", alpha=0.01), reason="a stricter question")
+        ben.amend_run(3, note="the second drum", reason="left out")
+    key, old = signing_key(1), signing_key(2)
+    lab.register_key("ana", old.public)
+    lab.register_key("ana", key.public)
+    lab.checkpoint(old)
+    lab.revoke_key(key_id(old.public), reason="the laptop is lost")
+    lab.checkpoint(key)
     return lab

@@ -258,7 +258,10 @@ def upgrade() -> None:
             "grouping IN ('batch', 'material', 'supplier')", name=op.f("ck_comparison_revision_grouping")
         ),
         sa.CheckConstraint("alpha > 0 AND alpha < 1", name=op.f("ck_comparison_revision_alpha")),
-        sa.CheckConstraint("listed IN (0, 1) AND known_spread IN (0, 1) AND sessions IN (0, 1)", name=op.f("ck_comparison_revision_truth")),
+        sa.CheckConstraint(
+            "listed IN (0, 1) AND known_spread IN (0, 1) AND sessions IN (0, 1)",
+            name=op.f("ck_comparison_revision_truth"),
+        ),
         sa.ForeignKeyConstraint(
             ["characteristic"], ["characteristic.id"], name=op.f("fk_comparison_revision_characteristic")
         ),

@@ -33,7 +33,6 @@ def columns(table: Table) -> str:
 def plain_sqlite(sqlite_store: str) -> Iterator[sqlite3.Connection]:
     """SQLite as another program opens it: without any of Sameline's settings."""
     with closing(sqlite3.connect(sqlite_store)) as connection:
-        connection.execute("INSERT INTO run_amendment SELECT 1, 1, 1, 1, 'x', NULL, NULL, NULL, NULL, x'00'")
         yield connection
 
 
@@ -41,8 +40,6 @@ def plain_sqlite(sqlite_store: str) -> Iterator[sqlite3.Connection]:
 def plain_postgresql(postgresql: PostgreSQL, postgresql_template: str) -> Iterator[psycopg.Connection]:
     url = postgresql.new(postgresql_template).replace("postgresql+psycopg", "postgresql")
     with psycopg.connect(url) as connection:
-        connection.execute("INSERT INTO run_amendment SELECT 1, 1, 1, 1, 'x', NULL, NULL, NULL, NULL, ''")
-        connection.commit()
         yield connection
 
 

@@ -8,14 +8,16 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Callable
+from dataclasses import replace
 from datetime import UTC, datetime
 
 import pytest
 from sqlalchemy import Connection, Table, delete, insert
 
 import attacker as a
+from laboratory import signing_key
 from sameline.conclusions.recompute import verify
-from sameline.ledger.checkpoint import Checkpoint
+from sameline.ledger.checkpoint import Checkpoint, sign_checkpoint
 from sameline.records import tables as t
 from sameline.records.checks import Finding, check_ledger
 from sameline.records.store import Store
@@ -40,7 +42,7 @@ COLUMNS = [
     pytest.param(table, column.name, id=f"{table.name}-{column.name}")
     for table in (t.entry, *t.recorded_tables())
     for column in table.columns
-    if column.name != a.key(table) and table.name != "run_amendment"
+    if column.name != a.key(table)
 ]
 
 
@@ -289,9 +291,16 @@ def test_the_postgresql_schema_is_changed(postgresql_store: str, statement: str)
 
 
 def checkpoint_of(connection: Connection) -> Checkpoint:
+    """A checkpoint of the ledger as it is, signed with a registered key, and kept elsewhere only."""
     report = check_ledger(connection)
-    moment = datetime(2026, 3, 3, tzinfo=UTC)
-    return Checkpoint("Northbank Testing", report.entries, bytes.fromhex(report.root), moment, "Ana Lindqvist", b"")
+    return sign_checkpoint(
+        signing_key(1),
+        laboratory="Northbank Testing",
+        entries=report.entries,
+        root=bytes.fromhex(report.root),
+        time=datetime(2026, 3, 3, tzinfo=UTC),
+        signer="Ana Lindqvist",
+    )
 
 
 def test_a_ledger_cut_off_at_its_end_is_found_against_a_checkpoint(sqlite_module_store: str):
@@ -311,21 +320,50 @@ def test_a_ledger_cut_off_at_its_end_is_found_against_a_checkpoint(sqlite_module
 
 
 def test_a_ledger_made_anew_is_found_against_a_checkpoint(sqlite_module_store: str):
+    """The store's own checkpoints tell it too, unless they are taken away."""
     with a.unguarded(sqlite_module_store) as connection:
         kept = checkpoint_of(connection)
         a.write(connection, t.measurement, 14, text="70.5")
+        a.rehash_all(connection)
+        (finding, *_) = found(connection)
+        assert "recorded checkpoint" in finding.problem
+        a.forget(connection, t.checkpoint)
         a.rehash_all(connection)
         assert found(connection) == []
         (finding,) = found(connection, kept)
         assert (finding.check, "not those that the checkpoint states" in finding.problem) == (10, True)
 
 
-def test_a_checkpoint_of_another_laboratory_is_told(sqlite_module_store: str):
+def test_a_checkpoint_of_another_laboratory_or_signer_is_told(sqlite_module_store: str):
     with a.unguarded(sqlite_module_store) as connection:
         kept = checkpoint_of(connection)
-        other = Checkpoint("Elsewhere", kept.entries, kept.root, kept.time, kept.signer, kept.key)
-        (finding,) = found(connection, other)
-        assert "another laboratory" in finding.problem
+        problems = [f.problem for f in found(connection, replace(kept, laboratory="Elsewhere"))]
+        assert len(problems) == 2  # another laboratory, and not what was signed
+        assert "another laboratory" in problems[0]
+        (finding,) = found(connection, replace(kept, signer="Eve"))
+        assert "signature" in finding.problem
+        (finding,) = found(connection, replace(kept, key=signing_key(3).public))
+        assert "not known" in finding.problem
+
+
+def test_a_checkpoint_signed_after_its_key_was_revoked_is_told(sqlite_module_store: str):
+    with a.unguarded(sqlite_module_store) as connection:
+        kept = checkpoint_of(connection)
+        old = signing_key(2)
+        late = {"laboratory": kept.laboratory, "entries": kept.entries, "root": kept.root, "signer": kept.signer}
+        (finding,) = found(connection, sign_checkpoint(old, time=kept.time, **late))
+        assert "revoked" in finding.problem
+        early = datetime(2026, 3, 1, tzinfo=UTC)
+        assert found(connection, sign_checkpoint(old, time=early, **late)) == []
+
+
+def test_the_signature_of_another_checkpoint_is_told(sqlite_module_store: str):
+    with a.unguarded(sqlite_module_store) as connection:
+        a.write(connection, t.checkpoint, 2, signature=a.read(connection, t.checkpoint, 1)["signature"])
+        a.rehash_row(connection, t.checkpoint, 2)
+        findings = found(connection)
+        assert any(f.check == 10 and "signature" in f.problem for f in findings)
+        assert named(findings, "checkpoint", 2, 6)
 
 
 def _made_anew(store: str, table: Table, number: int, **fields: object) -> list[Finding]:
@@ -334,6 +372,7 @@ def _made_anew(store: str, table: Table, number: int, **fields: object) -> list[
             connection.connection.dbapi_connection.execute("PRAGMA foreign_keys = OFF")
             with connection.begin():
                 a.write(connection, table, number, **fields)
+                a.forget(connection, t.checkpoint)
                 a.rehash_all(connection)
         return list(verify(opened).findings)
 

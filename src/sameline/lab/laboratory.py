@@ -15,13 +15,15 @@ from sameline.errors import CallError, FindingsError
 from sameline.lab.corrections import touched_by_amending_runs, touched_by_reversal
 from sameline.lab.outcomes import Outcome, Taken, by_source, refuse
 from sameline.lab.reads import Reads
-from sameline.records import amendments, comparisons, registry, reversal, run_particulars, runs, scope
+from sameline.records import amendments, comparisons, registry, reversal, run_particulars, runs, scope, signing
 from sameline.records import tables as t
 from sameline.records.moments import read_zone, utc_text
 from sameline.records.store import Reading, Store
 
 if TYPE_CHECKING:
     from sameline.intake.rawfiles import RawFile
+    from sameline.ledger.checkpoint import Checkpoint
+    from sameline.ledger.signatures import SigningKey
     from sameline.records.acts import Act
     from sameline.records.comparisons import Statement
     from sameline.records.drafts import DraftMeasurement, DraftRun, SourceFile
@@ -178,6 +180,23 @@ class Lab(Reads):
             comparison = comparisons.state(act, statement)
             scope.touch(act, [comparison])
         return self._after(act.number)
+
+    def register_key(self, person: str, public: bytes, *, reason: str | None = None) -> Outcome:
+        """Register the public key (32 bytes) that a person signs with; the private one stays outside the store."""
+        with self._act("key", reason) as act:
+            signing.register_key(act, person, public)
+        return Outcome(act.number)
+
+    def revoke_key(self, name: str, *, reason: str) -> Outcome:
+        """Revoke a key by its short name: nothing signed with it from now on counts."""
+        with self._act("revoke key", reason) as act:
+            signing.revoke_key(act, name)
+        return Outcome(act.number)
+
+    def checkpoint(self, signing_key: SigningKey) -> Checkpoint:
+        """Sign the ledger's size and root as they are now; who keeps it can later see that nothing was rewritten."""
+        with self._act("checkpoint", None) as act:
+            return signing.make_checkpoint(act, signing_key)
 
     def catch_up(self) -> Outcome:
         """Answer every comparison that is behind."""

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 from typing import TYPE_CHECKING, Any
 
@@ -17,6 +17,7 @@ if TYPE_CHECKING:
 
     from sameline.conclusions.planning import Sizes
     from sameline.conclusions.recompute import Verification
+    from sameline.ledger.checkpoint import Checkpoint
     from sameline.records.answers import Answer, Conclusion
     from sameline.records.drafts import DraftMeasurement, Register
     from sameline.records.runs import Measurement
@@ -143,11 +144,13 @@ class Reads:
             moments = {w: read_moment(only[w], zone) for w in ("since", "until") if only.get(w) is not None}
             return read_trail(reading, **{**only, **moments})
 
-    def verify(self, progress: Callable[[str, int, int], None] | None = None) -> Verification:
+    def verify(
+        self, progress: Callable[[str, int, int], None] | None = None, checkpoints: Sequence[Checkpoint] = ()
+    ) -> Verification:
         """Check the ledger against the rows, and recompute every conclusion: every finding, not only the first."""
         from sameline.conclusions.recompute import verify
 
-        return verify(self._store, progress)
+        return verify(self._store, progress, checkpoints)
 
     def moment(self, text: str | None) -> str | None:
         """A moment as a person writes it, as the store keeps it; without a zone it is in the laboratory's."""

@@ -2,13 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
 from sqlalchemy import Connection, select
 
-from sameline.ledger.checkpoint import Checkpoint
 from sameline.ledger.errors import FormatError
 from sameline.ledger.manifest import parse_manifest
 from sameline.ledger.merkle import Frontier
@@ -73,26 +71,6 @@ def check_entries(connection: Connection, findings: Findings, sizes: frozenset[i
         )
     said.root = frontier.root()
     return said
-
-
-def check_checkpoints(
-    connection: Connection, findings: Findings, said: Entries, checkpoints: Sequence[Checkpoint]
-) -> None:
-    """10. The ledger still begins with the entries of each checkpoint, which is the laboratory's."""
-    names = set(connection.execute(select(t.laboratory.c.name)).scalars())
-    for checkpoint in checkpoints:
-        for problem in _against(checkpoint, said, names):
-            when = checkpoint.time.strftime("%Y-%m-%d %H:%M:%S")
-            findings.add(10, f"{problem} (checkpoint of {when} UTC by {checkpoint.signer})", "entry", None)
-
-
-def _against(checkpoint: Checkpoint, said: Entries, names: set[str]) -> Iterator[str]:
-    if checkpoint.laboratory not in names:
-        yield f"the checkpoint is of another laboratory, {checkpoint.laboratory}"
-    if checkpoint.entries > said.last:
-        yield f"the ledger has {said.last} entries, and had {checkpoint.entries}: entries have been taken away"
-    elif checkpoint.entries and said.roots.get(checkpoint.entries) != checkpoint.root:
-        yield f"the first {checkpoint.entries} entries are not those that the checkpoint states"
 
 
 def _stored_nodes(connection: Connection) -> dict[tuple[Any, Any], Any]:

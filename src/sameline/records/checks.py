@@ -11,8 +11,9 @@ The checks, by number:
 7. Every reference leads to a row.
 
 Recomputing the conclusions is the eighth check (`sameline.conclusions.recompute`); that no comparison was left behind
-unseen, the ninth. The tenth is that the ledger still begins with the entries of each checkpoint that is given: only
-against one that was kept elsewhere can it be seen that entries were cut off at the end, or all made anew.
+unseen, the ninth. The tenth is that the ledger still begins with the entries of each checkpoint that is recorded or
+given, and that each is signed with its signer's registered key: only against one that was kept elsewhere can it be seen
+that entries were cut off at the end, or all made anew.
 """
 
 from __future__ import annotations
@@ -25,7 +26,8 @@ from sqlalchemy.exc import DBAPIError
 
 from sameline.ledger.checkpoint import Checkpoint
 from sameline.records import tables as t
-from sameline.records.check_entries import check_checkpoints, check_entries
+from sameline.records.check_checkpoints import check_checkpoints, recorded_checkpoints
+from sameline.records.check_entries import check_entries
 from sameline.records.check_rows import CHUNK, TableCheck, check_references
 from sameline.records.check_schema import check_schema
 from sameline.records.findings import Finding, Findings, LedgerReport, Progress
@@ -43,16 +45,16 @@ def check_ledger(
     Args:
         connection: a connection that sees the store.
         progress: told now and then how far it is.
-        checkpoints: statements of the ledger as it was, kept elsewhere; that they are signed by whom they say is for
-            the caller to check.
+        checkpoints: statements of the ledger as it was, kept elsewhere.
     """
     findings = Findings()
     with _odd_text(connection):
         present = set(inspect(connection).get_table_names())
         check_schema(connection, findings)
-        if not {"entry", "person", "tree_node", "laboratory"} <= present:
+        if not present >= _NEEDED:
             return LedgerReport(0, 0, "", tuple(findings.all))  # without these there is nothing to check against
-        said = check_entries(connection, findings, frozenset(c.entries for c in checkpoints))
+        recorded = recorded_checkpoints(connection, findings)
+        said = check_entries(connection, findings, frozenset(c.entries for c in (*checkpoints, *recorded)))
         count = _Count(sum(span.count for spans in said.spans.values() for span in spans), progress)
         for table in t.recorded_tables():
             with _unreadable(findings, table.name):
@@ -61,9 +63,12 @@ def check_ledger(
             for span in left:
                 findings.add(4, f"the entry wrote to {name}, which is no table of a store", None, None, span.entry)
         check_references(connection, findings)
-        check_checkpoints(connection, findings, said, checkpoints)
+        check_checkpoints(connection, findings, said, checkpoints, recorded)
     in_order = tuple(sorted(findings.all, key=lambda f: f.check))
     return LedgerReport(said.last, count.done, said.root.hex(), in_order)
+
+
+_NEEDED = frozenset({"entry", "person", "tree_node", "laboratory", "person_key", "person_key_revocation", "checkpoint"})
 
 
 class _Count:

@@ -12,7 +12,7 @@ from sameline.resources import migrations_folder
 if TYPE_CHECKING:
     from alembic.config import Config
 
-REVISIONS = ("0001",)
+REVISIONS = ("0001", "0002")
 """Every revision a store may have, oldest first; the last is this Sameline's."""
 
 
@@ -62,7 +62,7 @@ def upgrade(connection: Connection) -> None:
 
     config = _alembic()
     config.attributes["connection"] = connection
-    command.upgrade(config, "head")
+    command.upgrade(config, REVISIONS[-1])
 
 
 def _alembic() -> Config:

@@ -389,6 +389,31 @@ conclusion_turn = _recorded(
     Column("because", Text, nullable=False),
 )
 
+# -- who signs ----------------------------------------------------------------------------------------------------
+
+person_key = _recorded(
+    "person_key",
+    Column("person", Integer, _to("person.id"), nullable=False, index=True),
+    Column("public", LargeBinary, nullable=False, unique=True),  # the 32 bytes of an Ed25519 public key
+)
+
+# A key that is lost, retired or in the wrong hands; what it signed before this entry stands.
+person_key_revocation = _recorded(
+    "person_key_revocation", Column("person_key", Integer, _to("person_key.id"), nullable=False, unique=True)
+)
+
+# A signed statement of the ledger's size and root, as it was given away.
+checkpoint = _recorded(
+    "checkpoint",
+    Column("person_key", Integer, _to("person_key.id"), nullable=False, index=True),
+    Column("entries", Integer, nullable=False),
+    Column("root", LargeBinary, nullable=False),
+    Column("laboratory", Text, nullable=False),
+    Column("signer", Text, nullable=False),
+    Column("time", Text, nullable=False),
+    Column("signature", LargeBinary, nullable=False),
+)
+
 
 def recorded_tables() -> tuple[Table, ...]:
     """All tables of recorded rows (each with an id, an entry and a digest), in the order in which they depend."""
