@@ -12,10 +12,12 @@ from typing import Any
 from sqlalchemy import Connection, Float, Integer, LargeBinary, Table, delete, func, insert, select, update
 from sqlalchemy.exc import DBAPIError
 
+from sameline.ledger.checkpoint import Checkpoint
 from sameline.ledger.manifest import TableRows, manifest_text
 from sameline.ledger.merkle import Frontier, leaf_hash, root
 from sameline.ledger.rows import row_bytes
 from sameline.records import tables as t
+from sameline.records.checks import Finding, check_ledger
 from sameline.records.store import Store
 
 Row = dict[str, Any]
@@ -49,6 +51,16 @@ def without_triggers(connection: Connection, table: str) -> Iterator[None]:
     yield
     for _, statement in triggers:
         connection.exec_driver_sql(statement)
+
+
+def found(connection: Connection, *checkpoints: Checkpoint) -> list[Finding]:
+    """What checking the ledger finds."""
+    return list(check_ledger(connection, checkpoints=checkpoints).findings)
+
+
+def named(findings: list[Finding], table: str, row: int, check: int | None = None) -> bool:
+    """Whether a finding names this row."""
+    return any((f.table, f.row) == (table, row) and check in (None, f.check) for f in findings)
 
 
 def key(table: Table) -> str:

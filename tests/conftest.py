@@ -99,6 +99,14 @@ def sqlite_store(tmp_path: Path, sqlite_template: Path):
     return str(path)
 
 
+@pytest.fixture(scope="module")
+def sqlite_module_store(tmp_path_factory: pytest.TempPathFactory, sqlite_template):
+    """The path of the small laboratory's store, one for a whole file of tests that leave it as it was."""
+    path = tmp_path_factory.mktemp("tampered") / "lab.db"
+    path.write_bytes(sqlite_template.read_bytes())
+    return str(path)
+
+
 @pytest.fixture
 def postgresql_store(postgresql: servers.PostgreSQL, postgresql_template: str):
     """The URL of a database of its own that holds the small laboratory."""

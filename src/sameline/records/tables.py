@@ -11,8 +11,6 @@ SQLite and from PostgreSQL.
 
 from __future__ import annotations
 
-from typing import Any
-
 from sqlalchemy import (
     CheckConstraint,
     Column,
@@ -21,45 +19,16 @@ from sqlalchemy import (
     Index,
     Integer,
     LargeBinary,
-    MetaData,
     Table,
     Text,
     UniqueConstraint,
 )
 
-metadata = MetaData(
-    naming_convention={
-        "ix": "ix_%(table_name)s_%(column_0_N_name)s",
-        "uq": "uq_%(table_name)s_%(column_0_N_name)s",
-        "ck": "ck_%(table_name)s_%(constraint_name)s",
-        "fk": "fk_%(table_name)s_%(column_0_N_name)s",
-        "pk": "pk_%(table_name)s",
-    }
-)
+from sameline.records import table_parts
+from sameline.records.table_parts import one_of, recorded, to
 
-
-def _to(target: str) -> ForeignKey:
-    return ForeignKey(target)
-
-
-def _recorded(name: str, *parts: Any) -> Table:  # noqa: ANN401 - Column, Index or constraint, as Table takes them
-    """A table of recorded rows: identity, entry, digest, and what it is about."""
-    return Table(
-        name,
-        metadata,
-        Column("id", Integer, primary_key=True, autoincrement=False),
-        # deferrable, so that an act too large for memory may write its rows before its entry
-        Column("entry", Integer, ForeignKey("entry.number", deferrable=True, initially="IMMEDIATE"), nullable=False),
-        *parts,
-        Column("digest", LargeBinary, nullable=False),
-    )
-
-
-def _one_of(*columns: str) -> CheckConstraint:
-    """Exactly one of these columns has a value."""
-    filled = " + ".join(f"(CASE WHEN {column} IS NULL THEN 0 ELSE 1 END)" for column in columns)
-    return CheckConstraint(f"{filled} = 1", name="exactly_one")
-
+metadata = table_parts.metadata
+"""All tables of a store."""
 
 # -- the ledger ---------------------------------------------------------------------------------------------------
 
@@ -90,7 +59,7 @@ tree_node = Table(
 
 # -- what is registered -------------------------------------------------------------------------------------------
 
-laboratory = _recorded("laboratory", Column("name", Text, nullable=False), Column("zone", Text, nullable=False))
+laboratory = recorded("laboratory", Column("name", Text, nullable=False), Column("zone", Text, nullable=False))
 
 # Entries name persons, so this table alone names its entry without a constraint: two tables cannot both come first.
 person = Table(
@@ -101,55 +70,55 @@ person = Table(
     Column("code", Text, nullable=False, unique=True),
     Column("digest", LargeBinary, nullable=False),
 )
-person_particulars = _recorded(
+person_particulars = recorded(
     "person_particulars",
-    Column("person", Integer, _to("person.id"), nullable=False, index=True),
+    Column("person", Integer, to("person.id"), nullable=False, index=True),
     Column("name", Text, nullable=False),
     Column("role", Text),
 )
 
-supplier = _recorded("supplier", Column("code", Text, nullable=False, unique=True))
-supplier_particulars = _recorded(
+supplier = recorded("supplier", Column("code", Text, nullable=False, unique=True))
+supplier_particulars = recorded(
     "supplier_particulars",
-    Column("supplier", Integer, _to("supplier.id"), nullable=False, index=True),
+    Column("supplier", Integer, to("supplier.id"), nullable=False, index=True),
     Column("name", Text, nullable=False),
     Column("note", Text),
 )
 
-material = _recorded("material", Column("code", Text, nullable=False, unique=True))
-material_particulars = _recorded(
+material = recorded("material", Column("code", Text, nullable=False, unique=True))
+material_particulars = recorded(
     "material_particulars",
-    Column("material", Integer, _to("material.id"), nullable=False, index=True),
+    Column("material", Integer, to("material.id"), nullable=False, index=True),
     Column("name", Text, nullable=False),
     Column("note", Text),
 )
 
-instrument = _recorded("instrument", Column("code", Text, nullable=False, unique=True))
-instrument_particulars = _recorded(
+instrument = recorded("instrument", Column("code", Text, nullable=False, unique=True))
+instrument_particulars = recorded(
     "instrument_particulars",
-    Column("instrument", Integer, _to("instrument.id"), nullable=False, index=True),
+    Column("instrument", Integer, to("instrument.id"), nullable=False, index=True),
     Column("name", Text, nullable=False),
     Column("note", Text),
 )
 
-batch = _recorded("batch", Column("code", Text, nullable=False, unique=True))
-batch_particulars = _recorded(
+batch = recorded("batch", Column("code", Text, nullable=False, unique=True))
+batch_particulars = recorded(
     "batch_particulars",
-    Column("batch", Integer, _to("batch.id"), nullable=False, index=True),
-    Column("material", Integer, _to("material.id"), nullable=False, index=True),
-    Column("supplier", Integer, _to("supplier.id"), nullable=False, index=True),
+    Column("batch", Integer, to("batch.id"), nullable=False, index=True),
+    Column("material", Integer, to("material.id"), nullable=False, index=True),
+    Column("supplier", Integer, to("supplier.id"), nullable=False, index=True),
     Column("supplier_lot", Text),
     Column("received", Text),
     Column("note", Text),
 )
 
 # The unit belongs to the identity: values already recorded are in it.
-characteristic = _recorded(
+characteristic = recorded(
     "characteristic", Column("code", Text, nullable=False, unique=True), Column("unit", Text, nullable=False)
 )
-characteristic_particulars = _recorded(
+characteristic_particulars = recorded(
     "characteristic_particulars",
-    Column("characteristic", Integer, _to("characteristic.id"), nullable=False, index=True),
+    Column("characteristic", Integer, to("characteristic.id"), nullable=False, index=True),
     Column("name", Text, nullable=False),
     Column("method", Text),
     Column("lower", Float(53)),
@@ -166,31 +135,31 @@ characteristic_particulars = _recorded(
 
 # -- what was tested ----------------------------------------------------------------------------------------------
 
-source_file = _recorded(
+source_file = recorded(
     "source_file",
     Column("name", Text, nullable=False),
     Column("sha256", Text, nullable=False, index=True),
     Column("size", Integer, nullable=False),
 )
 
-run = _recorded(
+run = recorded(
     "run",
-    Column("batch", Integer, _to("batch.id"), nullable=False),
-    Column("characteristic", Integer, _to("characteristic.id"), nullable=False),
+    Column("batch", Integer, to("batch.id"), nullable=False),
+    Column("characteristic", Integer, to("characteristic.id"), nullable=False),
     Column("tested_at", Text, nullable=False),
-    Column("analyst", Integer, _to("person.id")),
-    Column("instrument", Integer, _to("instrument.id"), index=True),
+    Column("analyst", Integer, to("person.id")),
+    Column("instrument", Integer, to("instrument.id"), index=True),
     Column("session", Text),
     Column("note", Text),
-    Column("source_file", Integer, _to("source_file.id"), index=True),
+    Column("source_file", Integer, to("source_file.id"), index=True),
     Column("source_row", Integer),
     Index(None, "characteristic", "batch", "tested_at"),
     Index(None, "batch"),
 )
 
-measurement = _recorded(
+measurement = recorded(
     "measurement",
-    Column("run", Integer, _to("run.id"), nullable=False),
+    Column("run", Integer, to("run.id"), nullable=False),
     Column("replicate", Integer, nullable=False),
     Column("text", Text, nullable=False),
     Column("value", Float(53), nullable=False),
@@ -202,9 +171,9 @@ measurement = _recorded(
 
 # -- corrections: always with a reason, which stands in the entry -------------------------------------------------
 
-measurement_amendment = _recorded(
+measurement_amendment = recorded(
     "measurement_amendment",
-    Column("measurement", Integer, _to("measurement.id"), nullable=False, index=True),
+    Column("measurement", Integer, to("measurement.id"), nullable=False, index=True),
     Column("text", Text, nullable=False),
     Column("value", Float(53), nullable=False),
     Column("qualifier", Text),
@@ -212,41 +181,41 @@ measurement_amendment = _recorded(
     CheckConstraint("qualifier IN ('<', '>')", name="qualifier"),
 )
 
-run_amendment = _recorded(
+run_amendment = recorded(
     "run_amendment",
-    Column("run", Integer, _to("run.id"), nullable=False, index=True),
-    Column("batch", Integer, _to("batch.id"), nullable=False, index=True),
+    Column("run", Integer, to("run.id"), nullable=False, index=True),
+    Column("batch", Integer, to("batch.id"), nullable=False, index=True),
     Column("tested_at", Text, nullable=False),
-    Column("analyst", Integer, _to("person.id")),
-    Column("instrument", Integer, _to("instrument.id")),
+    Column("analyst", Integer, to("person.id")),
+    Column("instrument", Integer, to("instrument.id")),
     Column("session", Text),
     Column("note", Text),
 )
 
-exclusion = _recorded(
+exclusion = recorded(
     "exclusion",
-    Column("measurement", Integer, _to("measurement.id"), index=True),
-    Column("run", Integer, _to("run.id"), index=True),
-    Column("batch", Integer, _to("batch.id"), index=True),
+    Column("measurement", Integer, to("measurement.id"), index=True),
+    Column("run", Integer, to("run.id"), index=True),
+    Column("batch", Integer, to("batch.id"), index=True),
     Column("cause", Text, nullable=False),
-    _one_of("measurement", "run", "batch"),
+    one_of("measurement", "run", "batch"),
 )
 
-restoration = _recorded("restoration", Column("exclusion", Integer, _to("exclusion.id"), nullable=False, unique=True))
+restoration = recorded("restoration", Column("exclusion", Integer, to("exclusion.id"), nullable=False, unique=True))
 
 # -- what is asked ------------------------------------------------------------------------------------------------
 
-comparison = _recorded("comparison", Column("name", Text, nullable=False, unique=True))
+comparison = recorded("comparison", Column("name", Text, nullable=False, unique=True))
 
-comparison_revision = _recorded(
+comparison_revision = recorded(
     "comparison_revision",
-    Column("comparison", Integer, _to("comparison.id"), nullable=False),
+    Column("comparison", Integer, to("comparison.id"), nullable=False),
     Column("revision", Integer, nullable=False),
-    Column("characteristic", Integer, _to("characteristic.id"), nullable=False, index=True),
+    Column("characteristic", Integer, to("characteristic.id"), nullable=False, index=True),
     Column("grouping", Text, nullable=False),
     Column("listed", Integer, nullable=False),  # whether its groups are listed by name (comparison_group)
-    Column("of_material", Integer, _to("material.id")),
-    Column("of_supplier", Integer, _to("supplier.id")),
+    Column("of_material", Integer, to("material.id")),
+    Column("of_supplier", Integer, to("supplier.id")),
     Column("tested_from", Text),
     Column("model", Text, nullable=False),
     Column("procedure", Text, nullable=False),
@@ -254,9 +223,9 @@ comparison_revision = _recorded(
     Column("alpha", Float(53), nullable=False),
     Column("alternative", Text, nullable=False),
     Column("margin", Float(53)),
-    Column("control_batch", Integer, _to("batch.id")),
-    Column("control_material", Integer, _to("material.id")),
-    Column("control_supplier", Integer, _to("supplier.id")),
+    Column("control_batch", Integer, to("batch.id")),
+    Column("control_material", Integer, to("material.id")),
+    Column("control_supplier", Integer, to("supplier.id")),
     Column("looks", Text, nullable=False),
     Column("final_units", Integer),
     Column("spending", Text),
@@ -270,31 +239,31 @@ comparison_revision = _recorded(
 )
 
 # The groups of a revision whose groups were listed by name; any other takes all that pass its filter.
-comparison_group = _recorded(
+comparison_group = recorded(
     "comparison_group",
-    Column("revision", Integer, _to("comparison_revision.id"), nullable=False, index=True),
+    Column("revision", Integer, to("comparison_revision.id"), nullable=False, index=True),
     Column("place", Integer, nullable=False),
-    Column("batch", Integer, _to("batch.id"), index=True),
-    Column("material", Integer, _to("material.id")),
-    Column("supplier", Integer, _to("supplier.id")),
-    _one_of("batch", "material", "supplier"),
+    Column("batch", Integer, to("batch.id"), index=True),
+    Column("material", Integer, to("material.id")),
+    Column("supplier", Integer, to("supplier.id")),
+    one_of("batch", "material", "supplier"),
 )
 
 # An act that changed what a comparison rests on: until a conclusion has read that far, the comparison is behind.
-comparison_touch = _recorded(
+comparison_touch = recorded(
     "comparison_touch",
-    Column("comparison", Integer, _to("comparison.id"), nullable=False),
+    Column("comparison", Integer, to("comparison.id"), nullable=False),
     Index(None, "comparison", "entry"),
 )
 
 # -- what is answered ---------------------------------------------------------------------------------------------
 
-conclusion = _recorded(
+conclusion = recorded(
     "conclusion",
-    Column("comparison", Integer, _to("comparison.id"), nullable=False),
+    Column("comparison", Integer, to("comparison.id"), nullable=False),
     Column("version", Integer, nullable=False),
-    Column("revision", Integer, _to("comparison_revision.id"), nullable=False),
-    Column("position", Integer, _to("entry.number"), nullable=False),  # the ledger position that it read
+    Column("revision", Integer, to("comparison_revision.id"), nullable=False),
+    Column("position", Integer, to("entry.number"), nullable=False),  # the ledger position that it read
     Column("look", Integer, nullable=False),
     Column("inputs", LargeBinary, nullable=False),  # digest of the values it was computed from
     Column("state", Text, nullable=False),
@@ -316,19 +285,19 @@ conclusion = _recorded(
     CheckConstraint("state IN ('answered', 'not computed')", name="state"),
 )
 
-conclusion_cause = _recorded(
+conclusion_cause = recorded(
     "conclusion_cause",
-    Column("conclusion", Integer, _to("conclusion.id"), nullable=False, index=True),
-    Column("cause", Integer, _to("entry.number"), nullable=False, index=True),
+    Column("conclusion", Integer, to("conclusion.id"), nullable=False, index=True),
+    Column("cause", Integer, to("entry.number"), nullable=False, index=True),
 )
 
-conclusion_group = _recorded(
+conclusion_group = recorded(
     "conclusion_group",
-    Column("conclusion", Integer, _to("conclusion.id"), nullable=False, index=True),
+    Column("conclusion", Integer, to("conclusion.id"), nullable=False, index=True),
     Column("place", Integer, nullable=False),
-    Column("batch", Integer, _to("batch.id")),
-    Column("material", Integer, _to("material.id")),
-    Column("supplier", Integer, _to("supplier.id")),
+    Column("batch", Integer, to("batch.id")),
+    Column("material", Integer, to("material.id")),
+    Column("supplier", Integer, to("supplier.id")),
     Column("units", Integer, nullable=False),
     Column("runs", Integer, nullable=False),
     Column("replicates", Integer, nullable=False),
@@ -337,14 +306,14 @@ conclusion_group = _recorded(
     Column("lower", Float(53)),
     Column("upper", Float(53)),
     Column("letters", Text, nullable=False),  # the lines it stands on, a letter each
-    _one_of("batch", "material", "supplier"),
+    one_of("batch", "material", "supplier"),
 )
 
-conclusion_pair = _recorded(
+conclusion_pair = recorded(
     "conclusion_pair",
-    Column("conclusion", Integer, _to("conclusion.id"), nullable=False, index=True),
-    Column("a", Integer, _to("conclusion_group.id"), nullable=False),
-    Column("b", Integer, _to("conclusion_group.id"), nullable=False),
+    Column("conclusion", Integer, to("conclusion.id"), nullable=False, index=True),
+    Column("a", Integer, to("conclusion_group.id"), nullable=False),
+    Column("b", Integer, to("conclusion_group.id"), nullable=False),
     Column("difference", Float(53)),
     Column("standard_error", Float(53)),
     Column("df", Float(53)),
@@ -365,47 +334,47 @@ conclusion_pair = _recorded(
     ),
 )
 
-conclusion_component = _recorded(
+conclusion_component = recorded(
     "conclusion_component",
-    Column("conclusion", Integer, _to("conclusion.id"), nullable=False, index=True),
+    Column("conclusion", Integer, to("conclusion.id"), nullable=False, index=True),
     Column("level", Text, nullable=False),
     Column("variance", Float(53), nullable=False),
     Column("lower", Float(53)),
     Column("upper", Float(53)),
 )
 
-conclusion_caution = _recorded(
+conclusion_caution = recorded(
     "conclusion_caution",
-    Column("conclusion", Integer, _to("conclusion.id"), nullable=False, index=True),
+    Column("conclusion", Integer, to("conclusion.id"), nullable=False, index=True),
     Column("code", Text, nullable=False),
     Column("text", Text, nullable=False),
 )
 
-conclusion_turn = _recorded(
+conclusion_turn = recorded(
     "conclusion_turn",
-    Column("conclusion", Integer, _to("conclusion.id"), nullable=False, index=True),
-    Column("pair", Integer, _to("conclusion_pair.id"), nullable=False),
+    Column("conclusion", Integer, to("conclusion.id"), nullable=False, index=True),
+    Column("pair", Integer, to("conclusion_pair.id"), nullable=False),
     Column("before", Text),  # the verdict in the version before, none where the pair is new
     Column("because", Text, nullable=False),
 )
 
 # -- who signs ----------------------------------------------------------------------------------------------------
 
-person_key = _recorded(
+person_key = recorded(
     "person_key",
-    Column("person", Integer, _to("person.id"), nullable=False, index=True),
+    Column("person", Integer, to("person.id"), nullable=False, index=True),
     Column("public", LargeBinary, nullable=False, unique=True),  # the 32 bytes of an Ed25519 public key
 )
 
 # A key that is lost, retired or in the wrong hands; what it signed before this entry stands.
-person_key_revocation = _recorded(
-    "person_key_revocation", Column("person_key", Integer, _to("person_key.id"), nullable=False, unique=True)
+person_key_revocation = recorded(
+    "person_key_revocation", Column("person_key", Integer, to("person_key.id"), nullable=False, unique=True)
 )
 
 # A signed statement of the ledger's size and root, as it was given away.
-checkpoint = _recorded(
+checkpoint = recorded(
     "checkpoint",
-    Column("person_key", Integer, _to("person_key.id"), nullable=False, index=True),
+    Column("person_key", Integer, to("person_key.id"), nullable=False, index=True),
     Column("entries", Integer, nullable=False),
     Column("root", LargeBinary, nullable=False),
     Column("laboratory", Text, nullable=False),
