@@ -14,10 +14,11 @@ import pandas as pd
 import pytest
 import xlsxwriter
 
+from sameline.intake import worksheets
 from sameline.intake.files import Intake, read_files
 from sameline.intake.odsfacts import decimals_in
 from sameline.intake.rawfiles import RawFile
-from sameline.intake.sheetfacts import PERCENT
+from sameline.intake.sheetfacts import PERCENT, SheetFacts
 from sameline.intake.xlsxfacts import shown_by
 from sameline.records.drafts import DraftMeasurement, Register
 
@@ -363,3 +364,35 @@ def test_the_checksum_of_a_part_is_held(read: Read):
     place = broken.rindex(checksum)
     broken[place] ^= 0xFF
     assert len(read(bytes(broken)).refusals) == 1
+
+
+@pytest.mark.parametrize("writer", [name for name in WRITERS if "odf" not in name])
+def test_the_fast_look_at_a_worksheet_sees_what_an_xml_parser_sees(writer: str):
+    rows = [[*HEAD, None, "x"], *ROWS, [], [None, 'a <c r="Z99"> in text & more', True, -1.5, "é"]]
+    data = WRITERS[writer]([HEAD, *ROWS] if "pandas" in writer else rows)
+    sheet = zipfile.ZipFile(io.BytesIO(data)).read(SHEET)
+    shown = [0, 2, PERCENT, PERCENT + 1]
+    fast, slow = SheetFacts(), SheetFacts()
+    texts = worksheets._by_pattern(sheet, shown, fast)
+    assert texts is not None
+    assert texts == worksheets._by_parser(sheet, shown, slow)
+    assert fast == slow
+    assert fast.rows > 3
+
+
+@pytest.mark.parametrize(
+    "change",
+    [
+        lambda content: content.replace(b'<c r="A2"', b"<c r='A2'"),
+        lambda content: content.replace(b'<c r="A2"', b'<c  r="A2"'),
+        lambda content: content.replace(b'<c r="A2"', b'<c r="&#65;2"'),
+        lambda content: content.replace(b"<sheetData>", b"<sheetData><!-- -->"),
+        lambda content: content.replace(b'<c r="A2" ', b"<c "),
+    ],
+)
+def test_a_worksheet_written_in_an_uncommon_way_is_parsed(read: Read, change: Callable[[bytes], bytes]):
+    content = zipfile.ZipFile(io.BytesIO(GOOD)).read(SHEET)
+    assert change(content) != content
+    assert worksheets._by_pattern(change(content), [], SheetFacts()) is None
+    intake = read(repacked(GOOD, {SHEET: change}))
+    assert intake.runs == read(GOOD).runs or intake.refusals

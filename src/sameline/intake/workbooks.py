@@ -61,7 +61,10 @@ class SheetTable:
         first = self._cells.start[1]  # the reader begins at the first column in use
         for number, row in enumerate(self._cells.iter_rows(), 1):
             shown = self._facts.formats.get(number, b"")[first:].ljust(len(row), b"\0")
-            texts = [as_text(value, how, decimal) for value, how in zip(row, shown, strict=False)]
+            texts = [
+                value if isinstance(value, str) else as_text(value, how, decimal)
+                for value, how in zip(row, shown, strict=False)
+            ]
             yield number, [""] * first + texts
 
     def merged(self) -> Mapping[tuple[int, int], tuple[int, int]]:
@@ -110,6 +113,8 @@ def as_text(value: Value, shown: int = 0, decimal: DecimalSign = ".") -> str:
 
 
 def _figure(value: float, shown: int) -> str:
+    if not shown and (plain := repr(value)).replace(".", "", 1).isdigit():
+        return plain.removesuffix(".0")
     exact = Decimal(repr(value)) if isinstance(value, float) else Decimal(value)
     if not exact.is_finite():
         return repr(value)

@@ -6,10 +6,8 @@ import posixpath
 import re
 
 from sameline.intake.packed import Packed
-from sameline.intake.sheetfacts import PERCENT, Attributes, SheetFacts, Span, parse, whole
-from sameline.intake.tables import UnreadableError
-
-_MOST_TEXT = 1_000_000_000  # characters that cells may share
+from sameline.intake.sheetfacts import PERCENT, Attributes, SheetFacts, parse, whole
+from sameline.intake.worksheets import worksheet_facts
 
 
 def xlsx_facts(packed: Packed) -> dict[str, SheetFacts]:
@@ -20,7 +18,7 @@ def xlsx_facts(packed: Packed) -> dict[str, SheetFacts]:
     """
     longest = _longest_text(packed)
     shown = _shown_by_style(packed)
-    return {name: _worksheet(packed.read(part), shown, longest) for name, part in _worksheets(packed).items()}
+    return {name: worksheet_facts(packed.read(part), shown, longest) for name, part in _worksheets(packed).items()}
 
 
 def _worksheets(packed: Packed) -> dict[str, str]:
@@ -93,47 +91,3 @@ def shown_by(code: str) -> int:
         return 0
     decimals = re.search(r"\.(0+)", plain)
     return min(len(decimals[1]) if decimals else 0, 30) + (PERCENT if "%" in plain else 0)
-
-
-_REFERENCE = re.compile(r"\$?([A-Z]{1,3})\$?(\d{1,7})", re.ASCII)
-
-
-def _place(reference: str) -> tuple[int, int] | None:
-    """Row (from 1) and place (from 0) of a reference such as "B7"."""
-    found = _REFERENCE.fullmatch(reference)
-    if found is None:
-        return None
-    place = 0
-    for letter in found[1]:
-        place = place * 26 + ord(letter) - 64
-    return int(found[2]), place - 1
-
-
-def _worksheet(content: bytes, shown: list[int], longest: int) -> SheetFacts:
-    facts = SheetFacts()
-    row, place, texts = 0, -1, 0
-
-    def start(name: str, attributes: Attributes) -> None:
-        nonlocal row, place, texts
-        if name == "c":
-            row, place = _place(attributes.get("r", "")) or (max(row, 1), place + 1)
-            facts.reach(row, place)
-            style = whole(attributes.get("s"))
-            if style < len(shown):
-                facts.show(row, place, shown[style])
-            texts += attributes.get("t") == "s"
-        elif name == "row":
-            row, place = whole(attributes.get("r")) or row + 1, -1
-        elif name == "mergeCell":
-            facts.merged.extend(_span(attributes.get("ref", "")))
-
-    parse(content, start)
-    if texts * longest > _MOST_TEXT:
-        raise UnreadableError("a sheet holds more text than can be read", "split it into smaller files")
-    return facts
-
-
-def _span(reference: str) -> list[Span]:
-    first, _, last = reference.partition(":")
-    start, end = _place(first), _place(last)
-    return [(*start, *end)] if start and end else []
