@@ -22,7 +22,7 @@ from sameline.records import tables as t
 from sameline.records.checks import check_ledger
 
 Ask = Callable[..., dict[str, Any]]
-ACTIONS = ("log", "amend", "take", "conclude")
+ACTIONS = ("log", "amend", "conclude", "take", "log", "amend", "conclude", "amend")
 
 
 @contextmanager
