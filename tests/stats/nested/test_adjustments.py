@@ -7,6 +7,7 @@ import pytest
 
 from sameline.stats import compare_pairs
 from sameline.stats.distributions import t_isf, t_two_sided
+from sameline.stats.dunnett_distribution import dunnett_sf
 from sameline.stats.nested import NestedFit, fit_nested
 from sameline.stats.nested.adjustments import holm
 
@@ -99,3 +100,30 @@ def test_replicates_as_units_says_how_much_too_narrow():
     assert found.width_ratio == pytest.approx(wide, rel=1e-10)
     assert found.text.startswith(f"run-to-run spread is {found.spread_ratio:.2g} times the replicate spread")
     assert fit_nested(y, group).replicates_as_units() is None
+
+
+def test_dunnett_in_complete_sessions_is_the_procedure_of_randomised_blocks():
+    """Every batch once in every session: Dunnett (1955) on the residual mean square, correlation one half."""
+    rng = np.random.default_rng(12)
+    session, group = np.repeat(np.arange(7), 4), np.tile(np.arange(4), 7)
+    y = 5.0 * rng.normal(size=7)[session] + rng.normal(size=28) + group
+    found = fit_nested(y, group, sessions=session).pairs(adjust="dunnett", control="0").pairs
+    table = y.reshape(7, 4)
+    rest = table - table.mean(1, keepdims=True) - table.mean(0) + table.mean()
+    error = (2 * np.sum(rest**2) / 18 / 7) ** 0.5
+    for at, pair in enumerate(found, start=1):
+        t = (table.mean(0)[at] - table.mean(0)[0]) / error
+        assert pair.statistic == pytest.approx(t, rel=1e-8)
+        assert pair.df == pytest.approx(18.0, rel=1e-6)
+        assert pair.p_value == pytest.approx(float(dunnett_sf(abs(t), np.full(3, 0.5**0.5), 18.0)), rel=1e-5)
+
+
+def test_dunnett_in_incomplete_sessions_errs_on_the_safe_side():
+    rng = np.random.default_rng(13)
+    session = np.repeat(np.arange(9), 3)
+    group = np.concatenate([rng.choice(5, 3, replace=False) for _ in range(9)])
+    y = 5.0 * rng.normal(size=9)[session] + rng.normal(size=27) + 0.5 * group
+    fit = fit_nested(y, group, sessions=session)
+    sharp, raw, blunt = (fit.pairs(adjust=adjust, control="0").pairs for adjust in ("dunnett", "none", "bonferroni"))
+    for left, middle, right in zip(raw, sharp, blunt, strict=True):
+        assert left.p_value < middle.p_value <= right.p_value * (1 + 1e-9)

@@ -66,7 +66,7 @@ def chain_of(rows: Rows, *, spread_known: bool = False) -> Chain:
     given = tuple(level for level in NESTED if level in rows.units)
     random, collapsed = _distinct(rows, given)
     while random and _no_residual(rows, random):
-        if spread_known and len(random) == 1:
+        if spread_known and random == ("replicate",) and any(gone.level == "run" for gone in collapsed):
             break
         rows, gone = _reduced(rows, random)
         collapsed.append(gone)

@@ -72,7 +72,7 @@ def _crossing(excess: Callable[[float], float], start: float, factor: float, end
         inside, outside = outside, outside * factor
         if (outside - end) * (end - start) > 0.0:
             return None
-    return float(brentq(excess, inside, outside, xtol=1e-10 * inside, rtol=1e-10))
+    return float(brentq(excess, inside, outside, xtol=1e-7 * inside, rtol=1e-7))
 
 
 def _minimum_given(criterion: Criterion, theta: NDArray[np.float64], index: int, value: float) -> float:

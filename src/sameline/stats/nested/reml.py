@@ -143,4 +143,5 @@ def _solved(
         roots, axes = np.linalg.eigh(matrix * scale[:, None] * scale[None, :])
         if roots[0] > 1e-10:
             return np.asarray(-scale * (axes @ ((axes.T @ (scale * gradient)) / roots)))
-    return np.asarray(-gradient / np.maximum(np.diag(expected), np.finfo(float).tiny))
+    diagonal = np.diag(expected)
+    return np.divide(-gradient, diagonal, out=np.zeros_like(gradient), where=diagonal > 0.0)

@@ -29,8 +29,10 @@ if TYPE_CHECKING:
     from sameline.stats.nested.levels import Chain
 
 MOST_DENSE = 400
-MOST_SHARED = 2_000_000
+MOST_SHARED = 1_000_000
 TOLD_APART = 1e-8
+SMALL = 1_000_000  # entries of a dense matrix for the check of perfect fits, which large data do not have
+NOTHING = 1e-20
 
 
 @dataclass(frozen=True, slots=True)
@@ -49,6 +51,7 @@ class Crossed:
         first: index in `random` of the eliminated factor.
         dense: index of the dense factor, or None.
         pairs: runs (left, right) that share an eliminated unit, each with itself too.
+        products: see `_products`.
     """
 
     random: tuple[str, ...]
@@ -61,6 +64,7 @@ class Crossed:
     first: int
     dense: int | None
     pairs: tuple[NDArray[np.intp], NDArray[np.intp]]
+    products: csr_array
 
     @property
     def k(self) -> int:
@@ -96,17 +100,20 @@ def crossed_of(chain: Chain) -> Crossed:
     columns = [(group, np.ones(group.size)), (np.full(group.size, centre.size), units.mean - centre[group])]
     if other is not None:
         columns.append((other + centre.size + 1, np.ones(group.size)))
+    design = _sparse(columns, centre.size + 1 + wide)
+    pairs = _sharing(block)
     return Crossed(
         random=random,
         size=units.size.astype(float),
         within_ss=units.within_ss,
         within_df=rows.y.size - units.size.size,
         centre=centre,
-        columns=_sparse(columns, centre.size + 1 + wide),
+        columns=design,
         block=block,
         first=first,
         dense=dense,
-        pairs=_sharing(block),
+        pairs=pairs,
+        products=_products(design, *pairs),
     )
 
 
@@ -205,22 +212,28 @@ def _eliminated(design: Crossed, theta: NDArray[np.float64], variance: Jet) -> t
 
 
 def _system(design: Crossed, entries: Jet) -> MatrixJet:
-    """C'V⁻¹C for the columns C, with derivatives."""
-    t, m = entries.slope.shape[0], design.size.size
-    left, right = design.pairs
-    columns = design.columns
+    """C'V⁻¹C for the columns C, with derivatives: all of them by one product with `design.products`."""
+    t, width = entries.slope.shape[0], design.columns.shape[1]
+    upper = np.triu_indices(t)
+    stack = np.concatenate((entries.value[None], entries.slope, entries.curve[upper]))
+    matrices = np.ascontiguousarray((design.products @ stack.T).T).reshape(-1, width, width)
+    curve = np.empty((t, t, width, width))
+    curve[upper] = matrices[t + 1 :]
+    curve[upper[1], upper[0]] = matrices[t + 1 :]
+    return MatrixJet(matrices[0], matrices[1 : t + 1], curve)
 
-    def sandwich(values: NDArray[np.float64]) -> NDArray[np.float64]:
-        inner = csr_array((values, (left, right)), shape=(m, m))
-        return np.asarray((columns.T @ (inner @ columns)).toarray())
 
-    width = columns.shape[1]
-    slope, curve = np.zeros((t, width, width)), np.zeros((t, t, width, width))
-    for i in range(t):
-        slope[i] = sandwich(entries.slope[i])
-        for j in range(i + 1):
-            curve[i, j] = curve[j, i] = sandwich(entries.curve[i, j])
-    return MatrixJet(sandwich(entries.value), slope, curve)
+def _products(columns: csr_array, left: NDArray[np.intp], right: NDArray[np.intp]) -> csr_array:
+    """The linear map from entries V⁻¹[left, right] to the entries of C'V⁻¹C, row by row."""
+    each, width = np.diff(columns.indptr), columns.shape[1]
+    most = int(each.max())
+    at = np.minimum(columns.indptr[:-1, None] + np.arange(most), columns.indices.size - 1)
+    real = np.arange(most) < each[:, None]
+    place, value = columns.indices[at], np.where(real, columns.data[at], 0.0)
+    rows = place[left][:, :, None] * width + place[right][:, None, :]
+    weights = value[left][:, :, None] * value[right][:, None, :]
+    pair = np.broadcast_to(np.arange(left.size)[:, None, None], rows.shape)
+    return csr_array((weights.ravel(), (rows.ravel(), pair.ravel())), shape=(width * width, left.size))
 
 
 def estimate_crossed(chain: Chain, place: NDArray[np.intp]) -> Estimate:
@@ -230,6 +243,7 @@ def estimate_crossed(chain: Chain, place: NDArray[np.intp]) -> Estimate:
         StatsError: the design cannot tell the session's spread from another, or is too large.
     """
     design = crossed_of(chain)
+    _refuse_saturated(design)
     t = len(design.random)
     scale = float(np.var(chain.rows.y)) + np.finfo(float).tiny
     starts = [np.full(t, scale / t), scale * np.array([1e-3] * (t - 1) + [1.0])]
@@ -246,6 +260,30 @@ def estimate_crossed(chain: Chain, place: NDArray[np.intp]) -> Estimate:
         observed=inverse_of_free(0.5 * found.hessian, theta > 0.0),
         criterion_at=lambda at: crossed_criterion(design, at),
     )
+
+
+def _refuse_saturated(design: Crossed) -> None:
+    """Where the run is the residual, sessions and batches must leave it something."""
+    if design.within_df > 0:
+        return
+    runs, k = design.size.size, design.k
+    sessions = int(design.block.max()) + 1
+    left = runs - sessions - (design.columns.shape[1] - k - 1)
+    if runs * (runs + sessions) <= SMALL:
+        blocks = np.eye(sessions)[design.block]
+        columns = design.columns.toarray()
+        y = columns[:, k]
+        matrix = np.hstack((np.delete(columns, k, axis=1), blocks))
+        solution, _, rank, _ = np.linalg.lstsq(matrix, y)
+        left = runs - int(rank)
+        if float(np.sum((y - matrix @ solution) ** 2)) <= NOTHING * float(np.sum(y**2)):
+            left = 0
+    if left <= 0:
+        raise StatsError(
+            "sessions and batches account for every run: nothing is left to judge a difference by",
+            where="sessions",
+            advice="replicate some runs, test batches in more sessions, or leave the sessions out",
+        )
 
 
 def _refuse_confounded(design: Crossed, information: NDArray[np.float64]) -> None:
