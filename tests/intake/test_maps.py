@@ -224,3 +224,32 @@ def test_long_and_wide_form_of_the_same_results_are_the_same_runs(take: Take):
     )
     bare = [[dataclasses.replace(run, row=None) for run in take(text).runs] for text in (long, wide)]
     assert bare[0] == bare[1]
+
+
+def test_a_row_of_units_below_the_headings_is_read_as_such_each_time(take: Take, register: Register):
+    text = "Lot;Date;TS 1;TS 2\n;;[psi];[psi]\nB-117;2026-03-04;1813;1800\n"
+    proposal = propose(text, register)
+    assert proposal.map.unit_row
+    form = renamed(proposal, "rig")
+    assert [m.unit for m in take(text, maps=[form]).runs[0].measurements] == ["psi", "psi"]
+    other = take(text.replace("[psi]", "MPa").replace("1813", "12.5").replace("1800", "12,4"), maps=[form])
+    assert [m.unit for m in take(text.replace("[psi]", "kgf/cm²"), maps=[form]).runs[0].measurements] == ["kgf/cm²"] * 2
+    assert [finding.problem for finding in other.refusals] == ["'12,4' has another decimal sign than '12.5' in row 3"]
+    assert take(text.replace("[psi]", "parsec"), maps=[form]).runs == ()
+
+
+def test_columns_of_one_name_are_told_apart_by_their_order(take: Take):
+    columns = [("Lot", "batch"), ("P", "characteristic"), ("D", "tested_at"), *[("Value", "value")] * 3]
+    form = HeadingMap("rig", tuple(MapColumn(*column) for column in columns))
+    intake = take("Lot,P,D,Value,Value,Value\nB-117,TS,2026-03-04,12.5,12.6,12.7\n", maps=[form])
+    assert intake.findings == ()
+    assert [(m.replicate, m.text) for m in intake.runs[0].measurements] == [(1, "12.5"), (2, "12.6"), (3, "12.7")]
+    assert take("Lot,P,D,Value,Value\nB-117,TS,2026-03-04,12.5,12.6\n", maps=[form]).runs == ()
+
+
+def test_a_column_that_the_map_does_not_know_is_asked_about(take: Take):
+    columns = [("Lot", "batch"), ("P", "characteristic"), ("D", "tested_at"), ("V", "value"), ("x", "ignore")]
+    form = HeadingMap("rig", tuple(MapColumn(*column) for column in columns))
+    (finding,) = take("Lot,P,D,x,V,V\nB-117,TS,2026-03-04,,12.5,12.6\n", maps=[form]).findings
+    assert (finding.column, finding.question) == ("V", True)
+    assert finding.problem == "the map 'rig' does not say what the column 'V' is"

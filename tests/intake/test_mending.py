@@ -38,9 +38,16 @@ def test_the_rest_of_a_text_file_holds_the_other_rows_and_says_why(register: Reg
     assert rest.name == "results.rest.csv"
     assert read_rows(rest, ";") == [
         ["batch", "characteristic", "tested_at", "replicate", "value", "problem"],
-        ["B-1l7", "TS", "2026-03-05", "1", "12,25", "batch: batch 'B-1l7' is not registered (did you mean 'B-117'?)"],
+        [
+            "B-1l7",
+            "TS",
+            "2026-03-05",
+            "1",
+            "12,25",
+            "in column 'batch': batch 'B-1l7' is not registered (did you mean 'B-117'?)",
+        ],
         ["B-121", "TS", "2026-03-04", "1", "12,4", "belongs to a run with a finding"],
-        ["B-121", "TS", "2026-03-04", "2", "x", "value: 'x' is text, not a figure"],
+        ["B-121", "TS", "2026-03-04", "2", "x", "in column 'value': 'x' is text, not a figure"],
         ["B-121", "TS", "2026-03-06", "1", "", "the row has 4 cells and there are 5 headings (is a cell missing?)"],
     ]
 
@@ -130,3 +137,15 @@ def test_only_workbooks_are_marked(register: Register):
     for raw in (RawFile("results.csv", TEXT.encode()), RawFile("x.xlsx", b"PK\x03\x04 broken")):
         with pytest.raises(CallError):
             marked_copy(raw, read_files([raw], register))
+
+
+# The characters that OWASP's page "CSV Injection" names: = + - @, tab, carriage return.
+@pytest.mark.parametrize("start", ["=", "+", "-", "@", "\t", "\r"])
+def test_text_that_a_spreadsheet_would_run_stays_text_in_the_rest(register: Register, start: str):
+    text = f'batch,characteristic,tested_at,value\n"{start}cmd|0",TS,2026-03-04,-3.2\n'
+    raw = RawFile("results.csv", text.encode())
+    (rest,) = rest_files(raw, read_files([raw], register))
+    row = read_rows(rest, ",")[1]
+    assert row[0] == f"'{start}cmd|0"
+    assert row[3] == "-3.2"
+    assert all(cell[:1] not in ("=", "+", "@", "\t", "\r") for cell in row)

@@ -46,7 +46,11 @@ def choose_layout(ways: Sequence[Table], maps: Sequence[HeadingMap], book: Findi
     for table, rows in heads:
         fitting = _fitting(rows, maps)
         if len(fitting) == 1:
-            return table, layout_of(*fitting[0])
+            form, number, headings = fitting[0]
+            for heading in form.unknown(headings):
+                problem = f"the map {form.name!r} does not say what the column {heading!r} is"
+                book.add(number, heading, heading, problem, "it would not be read", question=True)
+            return table, layout_of(form, number, headings, dict(rows).get(number + 1, ()))
         if fitting:
             names = ", ".join(repr(form.name) for form, _, _ in fitting)
             book.add(fitting[0][1], None, None, f"several maps fit these headings: {names}", "say which one is meant")

@@ -6,11 +6,11 @@ import re
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from sameline.errors import CallError
 from sameline.intake.dates import DateReader
 from sameline.intake.figures import Figure, read_figure
 from sameline.intake.headings import MapColumn, fold
 from sameline.intake.nearest import looks
+from sameline.intake.units import is_unit
 from sameline.intake.words import field_of
 from sameline.records.drafts import Register
 
@@ -159,12 +159,8 @@ def _apart(heading: str) -> tuple[str, str | None]:
     found = _UNIT.match(heading.strip())
     if found is None:
         return heading.strip(), None
-    from sameline.intake.units import check_unit
-
     unit = found["inside"] or found["behind"]
-    try:
-        check_unit(unit)
-    except CallError:
+    if not is_unit(unit):
         return heading.strip(), None
     return found["name"], unit
 

@@ -231,7 +231,7 @@ class _Reader:
         return maker.make(gatherer.groups, frozenset(doubtful))
 
     def _gather(self, table: Table, layout: Layout, lines: Lines, gatherer: Gatherer) -> None:
-        rows: Iterator[Row] = dropwhile(lambda row: row[0] <= layout.row, table.rows(layout.form.decimal or "."))
+        rows: Iterator[Row] = dropwhile(lambda row: row[0] <= layout.last_above, table.rows(layout.form.decimal or "."))
         with explaining(table):
             gatherer.take(lines.read(rows if self._progress is None else self._told(table, rows)))
         if not gatherer.groups and not lines.loose:

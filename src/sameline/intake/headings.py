@@ -8,8 +8,9 @@ from __future__ import annotations
 
 import json
 import re
+from collections import Counter
 from collections.abc import Mapping, Sequence
-from dataclasses import asdict, dataclass
+from dataclasses import asdict, dataclass, replace
 from typing import Any
 
 from sameline.errors import CallError
@@ -54,7 +55,8 @@ class HeadingMap:
 
     Attributes:
         name: the map's name, for example "tensile rig".
-        columns: what each column is; columns of the file that are not named here are not read.
+        columns: what each column is, in the order of the file where headings are alike; those not to be read as
+            "ignore" (a column of the file that is not named here at all is asked about).
         constants: fields that hold one value for the whole file, as (field, value).
         date_order: the order of day, month and year in dates that are not ISO 8601.
         decimal: the decimal sign; the other one may then group thousands.
@@ -62,6 +64,7 @@ class HeadingMap:
         encoding: the character encoding of a text file that is not UTF-8, for example "cp1252".
         fill_down: fields whose empty cells repeat the cell above (merged cells).
         footers: first cells of rows that close the table ("Mean", "Total") and are left out.
+        unit_row: whether the row below the headings holds the units of the columns of values.
     """
 
     name: str
@@ -73,11 +76,21 @@ class HeadingMap:
     encoding: str | None = None
     fill_down: tuple[str, ...] = ()
     footers: tuple[str, ...] = ()
+    unit_row: bool = False
 
     def fits(self, headings: Sequence[str]) -> bool:
         """Whether all columns of this map are among these headings."""
-        present = {fold(heading) for heading in headings}
-        return all(fold(column.heading) in present for column in self.columns)
+        return Counter(fold(column.heading) for column in self.columns) <= Counter(map(fold, headings))
+
+    def unknown(self, headings: Sequence[str]) -> list[str]:
+        """Headings that this map says nothing about."""
+        left = Counter(fold(column.heading) for column in self.columns)
+        unknown = []
+        for heading in headings:
+            left[fold(heading)] -= 1
+            if heading.strip() and left[fold(heading)] < 0:
+                unknown.append(heading)
+        return unknown
 
     def to_json(self) -> str:
         """The map as JSON with sorted keys, for keeping."""
@@ -161,6 +174,11 @@ class Layout:
     fields: Mapping[str, int]
     values: tuple[ValueColumn, ...]
 
+    @property
+    def last_above(self) -> int:
+        """The last row above the results."""
+        return self.row + self.form.unit_row
+
     def heading(self, field: str) -> str:
         """The heading of a field's column; the field's name where it has none."""
         place = self.fields.get(field)
@@ -204,17 +222,26 @@ def strange(headings: Sequence[str]) -> list[str]:
     return [name for name in headings if name.strip() and fold(name) not in _PASSED_OVER and _own_column(name) is None]
 
 
-def layout_of(form: HeadingMap, row: int, headings: Sequence[str]) -> Layout:
-    """The places of a map's columns among these headings; the map must fit them."""
-    places: dict[str, int] = {}
+def layout_of(form: HeadingMap, row: int, headings: Sequence[str], units: Sequence[str] = ()) -> Layout:
+    """The places of a map's columns among these headings; the map must fit them.
+
+    Args:
+        form: the map.
+        row: the row of the headings.
+        headings: the headings.
+        units: the cells of the row below, where the map says that it holds the units.
+    """
+    places: dict[str, list[int]] = {}
     for place, heading in enumerate(headings):
-        places.setdefault(fold(heading), place)
+        places.setdefault(fold(heading), []).append(place)
     fields: dict[str, int] = {}
     values = []
     for column in form.columns:
-        place = places[fold(column.heading)]
+        place = places[fold(column.heading)].pop(0)
         if column.field == "value":
-            values.append(ValueColumn(place, headings[place], column.characteristic, column.unit, column.replicate))
+            unit = units[place].strip(" []()") if form.unit_row and place < len(units) else ""
+            told = ValueColumn(place, headings[place], column.characteristic, column.unit, column.replicate)
+            values.append(replace(told, unit=unit or column.unit))
         elif column.field != "ignore":
             fields[column.field] = place
     return Layout(form, row, tuple(headings), fields, tuple(sorted(values, key=lambda value: value.index)))

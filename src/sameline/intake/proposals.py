@@ -18,6 +18,7 @@ from sameline.intake.headings import HeadingMap, MapColumn, fold, trimmed
 from sameline.intake.opening import open_tables
 from sameline.intake.rawfiles import SIZE_LIMIT, RawFile, load
 from sameline.intake.tables import HEAD, Row, Table, UnreadableError, explaining
+from sameline.intake.units import is_unit
 from sameline.intake.words import heading_words
 from sameline.records.drafts import Register
 
@@ -80,9 +81,10 @@ def propose_map(
     )
     if best is None or best.score <= 0:
         raise CallError("no row of the file looks like headings", where=raw.name, advice="give each column a heading")
-    known = Known(register)
-    columns = describe(best.headings, [row for _, row in best.body], known)
-    found = conventions(columns, [row for _, row in best.body], register)
+    unit_row = _is_unit_row(best)
+    body = [row for _, row in best.body[unit_row:]]
+    columns = describe(best.headings, body, Known(register))
+    found = conventions(columns, body, register)
     form = HeadingMap(
         name,
         tuple(column.proposed for column in columns if column.heading.strip()),
@@ -92,11 +94,18 @@ def propose_map(
         encoding=encoding,
         fill_down=found.fill_down,
         footers=found.footers,
+        unit_row=unit_row,
     )
     guesses = tuple(
         Guess(column.proposed, column.reason, column.samples) for column in columns if column.heading.strip()
     )
-    notes = (*found.notes, *_missing(form), *([f"the file's encoding is taken for {encoding}"] if encoding else []))
+    units = ["the row below the headings holds units"] if unit_row else []
+    notes = (
+        *units,
+        *found.notes,
+        *_missing(form),
+        *([f"the file's encoding is taken for {encoding}"] if encoding else []),
+    )
     return Proposal(form, raw.name, best.table.sheet, best.row, guesses, notes)
 
 
@@ -149,6 +158,13 @@ def _seen(table: Table, register: Register) -> _Seen | None:
     score, number, headings = max(scored, key=lambda one: one[:2])
     body = [(place, row) for place, row in rows if place > -number]
     return _Seen(table, -number, trimmed(headings), body, score) if body else None
+
+
+def _is_unit_row(seen: _Seen) -> bool:
+    """Whether the row right below the headings holds units and nothing else."""
+    number, row = seen.body[0]
+    cells = [cell.strip(" []()") for cell in row if cell.strip()]
+    return number == seen.row + 1 and len(seen.body) > 1 and bool(cells) and all(map(is_unit, cells))
 
 
 def _likeness(row: Sequence[str], words: frozenset[str]) -> float:

@@ -9,6 +9,7 @@ from pathlib import PurePath
 
 from sameline.errors import CallError
 from sameline.intake.choose import choose_layout
+from sameline.intake.figures import Figure, read_figure
 from sameline.intake.files import Intake, Part
 from sameline.intake.findings import Finding, FindingBook
 from sameline.intake.headings import HeadingMap, fold
@@ -47,7 +48,7 @@ def rest_files(raw: RawFile, intake: Intake, maps: Sequence[HeadingMap] = ()) ->
             continue
         table, layout = chosen
         found = [finding for finding in intake.findings if (finding.file, finding.sheet) == (part.file, part.sheet)]
-        rests.append(RawFile(_name(part), _written(table, part, found, layout.form.decimal or ".")))
+        rests.append(RawFile(_name(part), _written(table, part, found, layout.form)))
     return tuple(rests)
 
 
@@ -56,10 +57,10 @@ def _name(part: Part) -> str:
     return f"{stem}.rest.csv" if part.sheet is None else f"{stem}.{fold(part.sheet).replace('/', '_')}.rest.csv"
 
 
-def _written(table: Table, part: Part, findings: Sequence[Finding], decimal: str) -> bytes:
+def _written(table: Table, part: Part, findings: Sequence[Finding], form: HeadingMap) -> bytes:
     stream = io.StringIO(newline="")
-    writer = csv.writer(stream, delimiter=getattr(table, "delimiter", ";" if decimal == "," else ","))
-    writer.writerows(_rest(table, part, _words(findings), decimal))
+    writer = csv.writer(stream, delimiter=getattr(table, "delimiter", ";" if form.decimal == "," else ","))
+    writer.writerows(_rest(table, part, _words(findings), form))
     return stream.getvalue().encode("utf-8-sig")
 
 
@@ -68,22 +69,37 @@ def _words(findings: Iterable[Finding]) -> dict[int, str]:
     words: dict[int, list[str]] = {}
     for finding in findings:
         advice = f" ({finding.suggestion})" if finding.suggestion else ""
-        where = f"{finding.column}: " if finding.column else ""
+        where = f"in column {finding.column!r}: " if finding.column else ""
         for row in () if finding.row is None else (finding.row, *finding.more):
             words.setdefault(row, []).append(f"{where}{finding.problem}{advice}")
     return {row: "; ".join(said) for row, said in words.items()}
 
 
-def _rest(table: Table, part: Part, words: dict[int, str], decimal: str) -> Iterator[list[str]]:
+def _rest(table: Table, part: Part, words: dict[int, str], form: HeadingMap) -> Iterator[list[str]]:
+    unit_row = int(form.unit_row)
     held = None if part.held is None else frozenset(part.held)
     width = 0
     covered = table.merged()
     above: dict[int, str] = {}
-    for number, row in table.rows("," if decimal == "," else "."):
+    for number, row in table.rows(form.decimal or "."):
         above |= {place: text for place, text in enumerate(row) if text.strip()}
         if number == part.heading_row:
             width = len(row)
-            yield [*row, PROBLEM]
-        elif number > (part.heading_row or 0) and (held is None or number in held):
+            yield [*map(_harmless, row), PROBLEM]
+        elif number == (part.heading_row or 0) + unit_row:
+            yield row
+        elif number > (part.heading_row or 0) + unit_row and (held is None or number in held):
             filled = [above.get(place, "") if (number, place) in covered else text for place, text in enumerate(row)]
-            yield [*filled, *[""] * (width - len(row)), words.get(number, "belongs to a run with a finding")]
+            yield [
+                *map(_harmless, filled),
+                *[""] * (width - len(row)),
+                words.get(number, "belongs to a run with a finding"),
+            ]
+
+
+def _harmless(text: str) -> str:
+    """A cell that no spreadsheet runs as a formula: what begins like one and is no figure gets an apostrophe."""
+    if text[:1] not in ("=", "+", "-", "@", "\t", "\r"):
+        return text
+    figure = read_figure(text)
+    return text if isinstance(figure, Figure) or figure.stated or not text.strip() else f"'{text}"

@@ -201,6 +201,14 @@ def check_unit(text: str) -> str:
     return unit if isinstance(unit, str) else text
 
 
+def is_unit(text: str) -> bool:
+    """Whether a cell holds a unit, rather than a figure or another word."""
+    try:
+        return not text.isdigit() and bool(check_unit(text))
+    except CallError:
+        return False
+
+
 @lru_cache(maxsize=1024)
 def factors(text_unit: str, characteristic_unit: str) -> tuple[Fraction, Fraction]:
     """Slope and offset, exact, that turn a figure in `text_unit` into `characteristic_unit`.
