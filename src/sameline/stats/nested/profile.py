@@ -10,7 +10,6 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
-from scipy.optimize import brentq
 from scipy.special import chdtri
 
 from sameline.errors import StatsError
@@ -67,6 +66,8 @@ def profile_interval(criterion: Criterion, theta: NDArray[np.float64], index: in
 
 def _crossing(excess: Callable[[float], float], start: float, factor: float, end: float) -> float | None:
     """Where `excess` turns positive on the way from `start` to `end` by `factor`, or None."""
+    from scipy.optimize import brentq  # heavy, and few fits ask for a profile
+
     inside, outside = start, start * factor
     while excess(outside) <= 0.0:
         inside, outside = outside, outside * factor
