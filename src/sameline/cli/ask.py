@@ -30,6 +30,7 @@ def add_to(app: typer.Typer) -> None:
     app.command()(compare)
     app.command()(differ)
     app.command()(history)
+    app.command()(diagnose)
 
 
 def compare(
@@ -213,3 +214,24 @@ def history(
     from sameline.reports.history import history_text
 
     write(history_text(versions))
+
+
+def diagnose(
+    name: Annotated[str, typer.Argument(help="The comparison.")],
+    version: Annotated[int | None, typer.Option(help="This version of its conclusion instead of the latest.")] = None,
+    as_of: AsOfOption = None,
+    as_json: JsonOption = False,
+    store: StoreOption = DEFAULT_STORE,
+) -> None:
+    """Look again at the data behind a conclusion: spreads, shape, equivalence, and values that stand out."""
+    with open_store(store) as lab:
+        conclusion = lab.conclusion(name, version, as_of)
+        found, subject = lab.diagnose(conclusion), lab.subject(conclusion)
+    if as_json:
+        from sameline.reports.diagnosis import diagnosis_document
+
+        write_json(diagnosis_document(found, conclusion))
+        return
+    from sameline.reports.diagnosis import diagnosis_text
+
+    write(diagnosis_text(found, conclusion, subject))

@@ -30,13 +30,15 @@ def _judge(revision: Revision, inputs: Inputs, past: Past) -> Answer:
     reason = _refusal(revision, inputs)
     if reason is not None:
         return replace(nothing, reason=reason)
-    from sameline.conclusions.models import judge  # the statistics are loaded only when there is something to compute
+    # the statistics are loaded only when there is something to compute
+    from sameline.conclusions.diagnosis import standing_out
+    from sameline.conclusions.models import judge
 
     try:
         judged = judge(revision, inputs, past)
     except StatsError as error:
         return replace(nothing, reason=str(error))
-    return _answered(nothing, judged)
+    return _answered(nothing, replace(judged, cautions=(*judged.cautions, *standing_out(inputs.kept))))
 
 
 def _answered(nothing: Answer, judged: Judged) -> Answer:

@@ -173,12 +173,18 @@ def _pairs(result: PairsResult | NestedPairs) -> tuple[PairAnswer, ...]:
 
 
 def _test(result: PairsResult) -> GlobalTest | None:
-    table = result.anova
-    if table is None:
+    found = result.overall
+    if found is None:
         return None
-    return GlobalTest(
-        "one-way analysis of variance", finite(table.F), float(table.df_between), float(table.df_within), table.p_value
-    )
+    second = None if found.df2 is None else float(found.df2)
+    return GlobalTest(_TESTS[found.name], finite(found.statistic), float(found.df1), second, found.p_value)
+
+
+_TESTS = {
+    "one-way anova": "one-way analysis of variance",
+    "welch": "Welch's analysis of variance",
+    "kruskal-wallis": "Kruskal-Wallis test",
+}
 
 
 # -- nested -------------------------------------------------------------------------------------------------------

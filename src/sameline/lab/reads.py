@@ -15,6 +15,7 @@ from sameline.records.store import Reading, Store
 if TYPE_CHECKING:
     import pandas as pd
 
+    from sameline.conclusions.diagnosis import Diagnosis
     from sameline.conclusions.planning import Sizes
     from sameline.conclusions.recompute import Verification
     from sameline.ledger.checkpoint import Checkpoint
@@ -127,6 +128,13 @@ class Reads:
         conclusion = self.conclusion(name)
         with self.reading() as reading:
             return sizes_of(reading, conclusion, power=power, difference=difference, costs=costs)
+
+    def diagnose(self, conclusion: Conclusion) -> Diagnosis:
+        """Spreads, shape, equivalence and suspects in the data behind a conclusion; nothing is recorded."""
+        from sameline.conclusions.diagnosis import diagnose
+
+        with self.reading(conclusion.position) as reading:
+            return diagnose(reading, conclusion)
 
     def is_behind(self, conclusion: Conclusion) -> bool:
         """Whether the comparison of a conclusion is behind the records."""
