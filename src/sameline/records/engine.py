@@ -8,6 +8,8 @@ committed before they got it, while a reader sees one state of the records throu
 
 from __future__ import annotations
 
+import sqlite3
+import time
 from pathlib import Path
 from typing import Any
 
@@ -126,5 +128,35 @@ def _set_up_sqlite(connection: Any, _record: object) -> None:  # noqa: ANN401 - 
 
 
 def _begin_sqlite(connection: Connection) -> None:
-    writes = connection.get_execution_options().get("sameline_writes")
-    connection.exec_driver_sql("BEGIN IMMEDIATE" if writes else "BEGIN")
+    if connection.get_execution_options().get("sameline_writes"):
+        _take_turn(connection)
+    else:
+        connection.exec_driver_sql("BEGIN")
+
+
+def _take_turn(connection: Connection) -> None:
+    """Begin a writer's transaction when no other is at work; of many that wait, the longest waiting asks most often.
+
+    SQLite itself asks the less often the longer it waits, so that in a crowd those who came last are served first,
+    and some are not served within any reasonable time.
+    """
+    raw: Any = connection.connection.dbapi_connection
+    began = time.monotonic()
+    raw.execute("PRAGMA busy_timeout = 0")
+    try:
+        while (waited := time.monotonic() - began) < BUSY_SECONDS:
+            try:
+                raw.execute("BEGIN IMMEDIATE")
+            except sqlite3.OperationalError as error:
+                if "locked" not in str(error):
+                    break
+                time.sleep(max(_SHORTEST_WAIT, _FIRST_WAIT / (1 + waited)))
+            else:
+                return
+        connection.exec_driver_sql("BEGIN IMMEDIATE")  # what it raises, SQLAlchemy knows
+    finally:
+        raw.execute(f"PRAGMA busy_timeout = {1000 * BUSY_SECONDS}")
+
+
+_FIRST_WAIT = 0.02  # seconds between two attempts to begin
+_SHORTEST_WAIT = 0.001
