@@ -1,6 +1,6 @@
 """Prints how fast the comparisons of groups are, beside scipy and statsmodels measured in the same run.
 
-    python tests/benchmarks/stats_speed.py            # the whole table, about three minutes
+    python tests/benchmarks/stats_speed.py            # the whole table, a few minutes
     python tests/benchmarks/stats_speed.py --small    # the same on a few groups, in seconds: that the script works
 
 Every figure is the median of at least five runs, ours and the peer's in turn, in processor time of one thread, which
@@ -19,6 +19,7 @@ import statistics
 import subprocess
 import time
 from dataclasses import dataclass
+from functools import partial
 from typing import TYPE_CHECKING
 
 # one thread for everybody
@@ -62,10 +63,10 @@ def drop_tables() -> None:
                 thing.cache_clear()
 
 
-def made_up(groups: int, each: int = 6) -> tuple[np.ndarray, np.ndarray]:
-    """Invented data: groups of like size with two decimals, means that differ about as much as values do."""
+def made_up(groups: int, each: int = 6, apart: float = 0.0) -> tuple[np.ndarray, np.ndarray]:
+    """Invented data with two decimals; `apart` is the means' spread in units of the values'. It slows scipy down."""
     rng = np.random.default_rng(groups)
-    values = rng.normal(50.0, 1.0, groups * each) + np.repeat(rng.normal(0.0, 1.0, groups), each)
+    values = rng.normal(50.0, 1.0, groups * each) + np.repeat(rng.normal(0.0, 1.0, groups), each) * apart
     return np.round(values, 2), np.repeat([f"G{i:03d}" for i in range(groups)], each)
 
 
@@ -107,18 +108,18 @@ def scipy_dunnett(samples: list[np.ndarray]) -> object:
 
 def pairs_rows(scale: Scale) -> None:
     """All pairs under a common variance."""
-    values, labels = made_up(scale.middling)
-    samples = split(values, labels)
-    ours, by_scipy, by_statsmodels = medians(
-        [
-            lambda: compare_pairs(values, labels),
-            lambda: scipy_tukey(samples),
-            lambda: pairwise_tukeyhsd(values, labels),
-        ],
-        scale.runs,
-    )
-    show(f"Tukey-Kramer, {scale.middling} groups", ours, "scipy.stats.tukey_hsd", by_scipy, ">= 150")
-    show(f"Tukey-Kramer, {scale.middling} groups", ours, "statsmodels pairwise_tukeyhsd", by_statsmodels, ">= 80")
+    for name, apart in (("alike", 0.0), ("apart", 1.0)):
+        values, labels = made_up(scale.middling, apart=apart)
+        samples = split(values, labels)
+        works: list[Callable[[], object]] = [
+            partial(compare_pairs, values, labels),
+            partial(scipy_tukey, samples),
+            partial(pairwise_tukeyhsd, values, labels),
+        ]
+        ours, by_scipy, by_statsmodels = medians(works, scale.runs)
+        what = f"Tukey-Kramer, {scale.middling} groups, means {name}"
+        show(what, ours, "scipy.stats.tukey_hsd", by_scipy, ">= 150")
+        show(what, ours, "statsmodels pairwise_tukeyhsd", by_statsmodels, ">= 80")
     many, few = made_up(scale.large), split(*made_up(scale.few))
     ours, theirs = medians([lambda: compare_pairs(*many), lambda: scipy_tukey(few)], scale.runs)
     show(f"Tukey-Kramer, {scale.large} groups", ours, f"scipy.stats.tukey_hsd, {scale.few} groups", theirs, "> 1")
@@ -145,19 +146,21 @@ def own_rows(scale: Scale) -> None:
     for procedure in ("tukey-kramer", "games-howell"):
         many = made_up(scale.large)
         compare_pairs(*many, procedure)
-        again = statistics.median(seconds(lambda: compare_pairs(*many, procedure), cold=False) for _ in range(9))  # noqa: B023 - run at once
+        again = statistics.median(seconds(partial(compare_pairs, *many, procedure), cold=False) for _ in range(9))
         wanted = "<= 10 ms" if procedure == "tukey-kramer" else ""
         print(f"{procedure + ', ' + str(scale.large) + ' groups, second call':<46}{again * 1e3:10.2f} ms   {wanted}")
     for name, differs in hard_patterns(scale.large).items():
         label = [f"G{i:03d}" for i in range(len(differs))]
-        took = statistics.median(seconds(lambda: lines(label, range(len(label)), differs)) for _ in range(scale.runs))  # noqa: B023 - run at once
+        work = partial(lines, label, range(len(label)), differs)
+        took = statistics.median(seconds(work) for _ in range(scale.runs))
         print(f"{f'letters, {scale.large} groups, {name}':<46}{took * 1e3:10.2f} ms   <= 1000 ms")
     rng = np.random.default_rng(5)
     recorded = np.round(rng.normal(50.0, 3.0, scale.rows), 2)
     codes = rng.integers(0, scale.middling, scale.rows)
     codes[: scale.middling] = np.arange(scale.middling)
     for name, values in (("two decimals", recorded), ("computed", recorded / 3.0)):
-        took = statistics.median(seconds(lambda: group_sums(values, codes, scale.middling)) for _ in range(scale.runs))  # noqa: B023 - run at once
+        work = partial(group_sums, values, codes, scale.middling)
+        took = statistics.median(seconds(work) for _ in range(scale.runs))
         print(f"{f'exact sums, {scale.rows} values, {name}':<46}{took * 1e3:10.2f} ms   well under 1000 ms")
 
 
@@ -190,7 +193,7 @@ def r_rows(scale: Scale) -> None:
             f"cat(median(replicate({scale.runs}, system.time(TukeyHSD(a))[['elapsed']])))"
         )
         theirs = float(subprocess.run([rscript, "-e", code], capture_output=True, text=True, check=True).stdout)
-        (ours,) = medians([lambda: compare_pairs(values, labels)], scale.runs)  # noqa: B023 - run at once
+        (ours,) = medians([partial(compare_pairs, values, labels)], scale.runs)
         show(f"Tukey-Kramer, {groups} groups", ours, "R TukeyHSD", theirs, "")
 
 
