@@ -19,6 +19,7 @@ from looks_paths import (
     Paths,
     Scene,
     cumulate,
+    first_contrasts,
     first_interval_miss,
     first_naive,
     first_open,
@@ -94,10 +95,13 @@ def ways(scene: Scene) -> dict[str, Callable[[Paths], Floats]]:
     found: dict[str, Callable[[Paths], Floats]] = {
         "open": lambda paths: first_open(paths, MAIN, asked),
         "intervals": lambda paths: first_interval_miss(paths, MAIN),
-        "union": lambda paths: first_union(paths, MAIN, GROWTH, welch=uneven),
-        "union, every look": lambda paths: first_union(paths, MAIN, 1.0, welch=uneven),
+        "union": lambda paths: first_union(paths, MAIN, GROWTH, own_spreads=uneven),
+        "union, every look": lambda paths: first_union(paths, MAIN, 1.0, own_spreads=uneven),
         "naive, units": lambda paths: first_naive(paths, ALPHA),
     }
+    if uneven:
+        unit_sd = 1.0 if scene.spreads else math.sqrt(scene.run_sd**2 + 1.0 / 3.0)
+        found["open, contrasts"] = lambda paths: first_contrasts(paths, MAIN, unit_sd)
     if scene.arrivals != "units":
         found["naive, replicates"] = lambda paths: first_naive(paths, ALPHA, replicates=True)
     if plannable(scene):
@@ -129,14 +133,23 @@ def describe(scene: Scene) -> str:
     }[scene.arrivals]
 
 
-NULL_COLUMNS = ("open", "intervals", "planned", "union", "union, every look", "naive, units", "naive, replicates")
+NULL_COLUMNS = (
+    "open",
+    "intervals",
+    "open, contrasts",
+    "planned",
+    "union",
+    "union, every look",
+    "naive, units",
+    "naive, replicates",
+)
 
 
-def null_table(repeats: int) -> None:
+def null_table(repeats: int, groups: list[int]) -> None:
     """False claims over all looks when nothing differs."""
     print(f"\nFalse claims over all looks, nothing differs, {repeats} histories a row, alpha 0.05\n")
     header(("groups", "looks", "data", *NULL_COLUMNS))
-    for scene in null_scenes():
+    for scene in (scene for scene in null_scenes() if scene.groups in groups):
         found = run(scene, repeats, NULL_COLUMNS)
         cells = [f"{np.mean(np.isfinite(found[name])):.4f}" if name in found else "" for name in NULL_COLUMNS]
         row(scene.groups, scene.looks, describe(scene), *cells)
@@ -281,11 +294,12 @@ def main() -> None:
     parser.add_argument("--repeats", type=int, default=10_000)
     parser.add_argument("--power-repeats", type=int, default=1_000)
     parser.add_argument("--table", choices=["null", "strong", "power", "windows", "joining"], action="append")
+    parser.add_argument("--groups", type=int, nargs="*", default=[3, 5, 10, 40], help="rows of the null table")
     options = parser.parse_args()
     asked = options.table or ["null", "strong", "power", "windows", "joining"]
     start = time.process_time()
     tables: dict[str, Callable[[], None]] = {
-        "null": lambda: null_table(options.repeats),
+        "null": lambda: null_table(options.repeats, options.groups),
         "strong": lambda: strong_table(options.repeats),
         "power": lambda: power_table(options.power_repeats),
         "windows": lambda: window_table(options.repeats),

@@ -10,7 +10,7 @@ import numpy as np
 
 from sameline.stats.looks.blocks import log_block_evidence
 from sameline.stats.looks.closed import FEW, closed_p_few
-from sameline.stats.looks.evidence import critical_t
+from sameline.stats.looks.evidence import critical_t, log_e_value
 from sameline.stats.looks.many import LEAD, closed_p_many, log_pair_evidence, pair_indices
 from sameline.stats.looks.open_looks import PHI
 from sameline.stats.studentized_range import studentized_range_isf
@@ -207,29 +207,48 @@ def critical_q(rate: Floats, groups: int, df: Floats) -> Floats:
     return table[back.ravel()].reshape(rate.shape)
 
 
-def first_union(paths: Paths, rate: float, growth: float, *, welch: bool) -> Floats:
+def first_union(paths: Paths, rate: float, growth: float, *, own_spreads: bool) -> Floats:
     """(B,) first look at which judged looks, each with its share of `rate`, claim a pair; inf for never."""
     number = judged_numbers(paths.n.sum(-1), growth)
-    rates = rate * 6.0 / (math.pi * np.maximum(number, 1)) ** 2
+    rates = rate / (np.maximum(number, 1) * (np.maximum(number, 1) + 1.0))
     groups = paths.n.shape[-1]
-    if not welch:
+    if not own_spreads:
         crossed = largest_q(paths.n, paths.means, paths.ss, paths.df) >= critical_q(rates, groups, paths.df)
         return first_true(crossed & (number > 0))
-    a, b = pair_indices(groups)
-    variance = paths.own_ss / np.maximum(paths.n - 1, 1) / np.maximum(paths.n, 1)
-    both = variance[..., a] + variance[..., b]
-    with np.errstate(divide="ignore", invalid="ignore"):
-        parts = variance[..., a] ** 2 / (paths.n[..., a] - 1) + variance[..., b] ** 2 / (paths.n[..., b] - 1)
-        df = np.floor(np.clip(both**2 / parts, 1, None))
-        q = np.abs(paths.means[..., b] - paths.means[..., a]) / np.sqrt(both / 2)
-    there = (np.minimum(paths.n[..., a], paths.n[..., b]) > 1) & (number[..., None] > 0) & (both > 0)
-    df = np.where(there, np.minimum(df, 400.0), 1.0)
+    t, df, _, there = welch(paths)
+    q = t * math.sqrt(2.0)
+    there &= number[..., None] > 0
+    df = np.where(there, np.minimum(np.floor(df), 400.0), 1.0)
     spread = np.broadcast_to(rates[..., None], df.shape)
     crossed = np.zeros(df.shape, dtype=bool)
     # only what a range of two groups would reject can be rejected: most entries need no quantile
     near = there & (q > 2.8)
     crossed[near] = q[near] >= critical_q(spread[near], groups, df[near])
     return first_true(crossed.any(-1))
+
+
+def welch(paths: Paths) -> tuple[Floats, Floats, Floats, NDArray[np.bool_]]:
+    """(B, J, M) |t|, degrees of freedom, squared standard error of each pair by its own variances; where they exist."""
+    a, b = pair_indices(paths.n.shape[-1])
+    variance = paths.own_ss / np.maximum(paths.n - 1, 1) / np.maximum(paths.n, 1)
+    both = variance[..., a] + variance[..., b]
+    there = (np.minimum(paths.n[..., a], paths.n[..., b]) > 1) & (both > 0)
+    safe = np.where(there, both, 1.0)
+    degrees = np.maximum(paths.n - 1, 1)
+    parts = variance[..., a] ** 2 / degrees[..., a] + variance[..., b] ** 2 / degrees[..., b]
+    df = np.where(there, np.maximum(safe**2 / np.where(there, parts, 1.0), 1.0), 1.0)
+    t = np.where(there, np.abs(paths.means[..., b] - paths.means[..., a]) / np.sqrt(safe), 0.0)
+    return t, df, safe, there
+
+
+def first_contrasts(paths: Paths, alpha: float, unit_sd: float) -> Floats:
+    """(B,) first look at which `judge_open_contrasts` claims any pair, contrasts by Welch; inf for never.
+
+    With the pairs' evidence alone some pair is claimed exactly when Bonferroni claims the best one.
+    """
+    t, df, squared_error, there = welch(paths)
+    logs = np.where(there, log_e_value(t, df, unit_sd**2 / squared_error, PHI), 0.0)
+    return first_true(logs.max(-1) >= np.log(logs.shape[-1] / alpha))
 
 
 def judged_numbers(units: Floats, growth: float) -> NDArray[np.int64]:

@@ -40,7 +40,7 @@ def test_when_nothing_differs_no_more_than_alpha_is_claimed_over_all_looks(table
 @pytest.mark.parametrize("groups", [3, 5])
 def test_a_plan_spends_what_it_states(table, groups):
     found = rates(table, table.Scene(groups, 10, "units"), ("planned",))["planned"]
-    assert found == pytest.approx(0.045, abs=3.5 * math.sqrt(0.045 * 0.955 / REPEATS))
+    assert found == pytest.approx(table.MAIN, abs=3.5 * math.sqrt(0.05 * 0.95 / REPEATS))
 
 
 def test_equal_groups_are_not_claimed_while_another_differs(table):
@@ -56,7 +56,7 @@ def test_forty_groups_stay_within_alpha(table):
 
 def test_a_shift_of_one_spread_is_found_by_the_sixth_look_and_a_late_one_by_the_thirtieth(table):
     # the goals stated for 5 groups, 30 looks, three independent values a group and look
-    first = table.run(table.Scene(5, 30, "units", shift=1.0), 4000, ("open",))["open"]
+    first = table.run(table.Scene(5, 30, "units", shift=1.0), REPEATS, ("open",))["open"]
     assert np.median(first) <= 6
-    late = table.run(table.Scene(5, 30, "units", shift=1.0, start=10), 4000, ("open",))["open"]
+    late = table.run(table.Scene(5, 30, "units", shift=1.0, start=10), REPEATS, ("open",))["open"]
     assert np.isfinite(late).mean() >= 0.95

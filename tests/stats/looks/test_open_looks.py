@@ -11,12 +11,13 @@ from hypothesis import strategies as st
 
 from sameline.errors import StatsError
 from sameline.stats.looks import Contrasts, LooksState, UnitMeans, judge_open, judge_open_contrasts, restate, unit_means
-from sameline.stats.looks.amendments import look_weight, version_share
+from sameline.stats.looks.amendments import RESERVE, look_weight, version_share
 from sameline.stats.looks.many import holm_from_log, log_pair_evidence
-from sameline.stats.looks.open_looks import rule_of
+from sameline.stats.looks.open_looks import PHI, rule_of
 from sameline.stats.looks.shares import FOUNDERS, interval_shares, joiner_part
 
 LABELS = ("A", "B", "C", "D")
+KEPT = 1 - RESERVE
 
 
 def history(looks, shift=(0, 0, 0, 1.5), seed=1, offset=70.0):
@@ -106,12 +107,12 @@ def test_an_amendment_voids_the_claims_it_touches_and_draws_on_the_reserve():
     mended = judge_open(seen[-1], amended=["A"], state=state)
     touched, other = mended.pair("A", "D"), mended.pair("B", "D")
     plain = results[-1].pair("A", "D")
-    assert touched.p_value == pytest.approx(plain.p_now * 0.9 / (0.1 / 2))
+    assert touched.p_value == pytest.approx(plain.p_now * KEPT / (RESERVE / 2))
     assert other.p_value == results[-1].pair("B", "D").p_value
     assert "approximate" in mended.guarantee
     assert any("reserve" in note for note in mended.notes)
     second = judge_open(seen[-1], amended=["A"], state=mended.state).pair("A", "D")
-    assert second.p_value == pytest.approx(plain.p_now * 0.9 / (0.1 / 6))
+    assert second.p_value == pytest.approx(plain.p_now * KEPT / (RESERVE / 6))
     descriptive = judge_open(seen[-1], amended=["A"], reserve=0.0, state=follow(seen, reserve=0.0)[-1].state)
     assert descriptive.pair("A", "D").p_value == 1.0
     assert any("descriptive" in note for note in descriptive.notes)
@@ -147,9 +148,9 @@ def test_groups_that_join_have_their_own_part_and_the_others_keep_theirs():
     for row, plain in zip(before.pairs, alone.pairs, strict=True):
         assert row.p_value == pytest.approx(min(1.0, plain.p_value / FOUNDERS))
     means, n, ss, df = seen.arrays()
-    column = log_pair_evidence(means, n, ss, df, 1.0)[[2, 4, 5]]
+    column = log_pair_evidence(means, n, ss, df, PHI)[[2, 4, 5]]
     joined = [after.pair(a, "D").p_value for a in "ABC"]
-    assert joined == pytest.approx(np.minimum(1, holm_from_log(column) / joiner_part(1) / 0.9).tolist())
+    assert joined == pytest.approx(np.minimum(1, holm_from_log(column) / joiner_part(1) / KEPT).tolist())
     with pytest.raises(StatsError):
         judge_open(seen, founders=["B", "A"])
 
@@ -165,7 +166,7 @@ def test_the_shares_of_all_pairs_ever_formed_stay_within_one(founders, control):
 
 
 def test_reserve_and_look_shares_add_up_to_one():
-    assert sum(version_share(0.1, v) for v in range(2000)) == pytest.approx(1.0, abs=1e-4)
+    assert sum(version_share(RESERVE, v) for v in range(2000)) == pytest.approx(1.0, abs=1e-4)
     assert sum(look_weight(j) for j in range(1, 200_000)) == pytest.approx(1.0, abs=1e-5)
 
 

@@ -21,12 +21,13 @@ from sameline.stats.looks import (
     window_alpha,
     window_of,
 )
-from sameline.stats.looks.amendments import look_weight
+from sameline.stats.looks.amendments import RESERVE, look_weight
 from sameline.stats.looks.price import Price
 from sameline.stats.looks.windows import window_part
 from sameline.stats.studentized_range import studentized_range_isf, studentized_range_sf
 
 AB = ("A", "B", "C")
+KEPT = 1 - RESERVE
 
 
 def seen(n, last=0.0, labels=AB):
@@ -41,9 +42,9 @@ def plan(units, **options):
 def test_a_plan_of_one_look_is_a_single_look_at_what_the_reserve_leaves():
     found = judge_planned(seen(10, 1.0), plan(30, spending="pocock")).pairs[1]
     assert found.upper - found.difference == pytest.approx(
-        float(studentized_range_isf(0.045, 3, 27)) / np.sqrt(2) * np.sqrt(0.2), rel=0.02
+        float(studentized_range_isf(0.05 * KEPT, 3, 27)) / np.sqrt(2) * np.sqrt(0.2), rel=0.02
     )
-    assert found.p_value == pytest.approx(float(studentized_range_sf(np.sqrt(10), 3, 27)) / 0.9, rel=0.1)
+    assert found.p_value == pytest.approx(float(studentized_range_sf(np.sqrt(10), 3, 27)) / KEPT, rel=0.1)
 
 
 def test_a_plan_goes_on_from_its_stored_state_to_the_last_digit():
@@ -102,7 +103,7 @@ def test_an_amended_pair_of_a_plan_is_judged_from_the_reserve():
     mended = judge_planned(seen(10, 3.0), plan(60), amended=["C"], state=first.state)
     row = mended.pair("A", "C")
     alone = float(studentized_range_sf(3.0 / np.sqrt(0.1), 3, 27))
-    assert row.p_value == pytest.approx(alone / (0.05 * look_weight(1)))
+    assert row.p_value == pytest.approx(alone / (RESERVE / 2 * look_weight(1)))
     assert mended.pair("A", "B").p_value == first.pair("A", "B").p_value
 
 
@@ -127,9 +128,9 @@ def test_a_single_look_gives_verdicts_once():
     assert early.pair("A", "C").upper == np.inf
     late = judge_single(seen(12, 1.4), 30, state=early.state)
     row = late.pair("A", "C")
-    assert row.p_value == pytest.approx(row.p_single / 0.9)
+    assert row.p_value == pytest.approx(row.p_single / KEPT)
     assert any("stated at 30" in note for note in late.notes)
-    half = float(studentized_range_isf(0.045, 3, 33)) / np.sqrt(2) * np.sqrt(1 / 6)
+    half = float(studentized_range_isf(0.05 * KEPT, 3, 33)) / np.sqrt(2) * np.sqrt(1 / 6)
     assert row.upper == pytest.approx(1.4 + half)
     after = judge_single(seen(20, 0.0), 30, state=late.state).pair("A", "C")
     assert after.p_now is None
@@ -137,7 +138,7 @@ def test_a_single_look_gives_verdicts_once():
     with_control = judge_single(seen(12, 1.4), 30, control="A").pair("A", "C")
     assert with_control.p_value < row.p_value
     mended = judge_single(seen(12, 1.4), 30, amended=["C"], state=late.state).pair("A", "C")
-    assert mended.p_value == pytest.approx(min(1.0, row.p_single / (0.05 * look_weight(1))))
+    assert mended.p_value == pytest.approx(min(1.0, row.p_single / (RESERVE / 2 * look_weight(1))))
     before_the_look = judge_single(seen(12, 1.4), 30, amended=["C"], state=early.state).pair("A", "C")
     assert before_the_look.p_value == row.p_value
     for bad in ({"units": 1}, {"units": 30, "control": "B"}):
@@ -153,17 +154,17 @@ def contrasts(units, last, pairs=(("A", "B"), ("A", "C"), ("B", "C"))):
 def test_union_gives_each_judged_look_its_share():
     first = judge_union(contrasts(10, 1.0))
     p = float(studentized_range_sf(1.0 / 0.3 * np.sqrt(2), 3, 12.5))
-    assert first.pair("A", "C").p_value == pytest.approx(min(1, p / (0.9 * look_weight(1))))
+    assert first.pair("A", "C").p_value == pytest.approx(min(1, p / (KEPT * look_weight(1))))
     between = judge_union(contrasts(12, 2.0), state=first.state)
     assert between.pair("A", "C").p_now is None
     assert between.pair("A", "C").upper == first.pair("A", "C").upper
     assert rate_of_look(12, 0.05, first.state) is None
     second = judge_union(contrasts(13, 2.0), state=between.state)
     p = float(studentized_range_sf(2.0 / 0.3 * np.sqrt(2), 3, 12.5))
-    assert second.pair("A", "C").p_value == pytest.approx(p / (0.9 * look_weight(2)))
+    assert second.pair("A", "C").p_value == pytest.approx(p / (KEPT * look_weight(2)))
     assert second.pair("A", "C").differs
     assert second.state.judged == 2
-    assert rate_of_look(40, 0.05, second.state) == pytest.approx(0.045 * look_weight(3))
+    assert rate_of_look(40, 0.05, second.state) == pytest.approx(0.05 * KEPT * look_weight(3))
 
 
 def test_union_takes_any_procedure_and_says_when_a_pair_is_missing():
@@ -182,7 +183,7 @@ def test_union_judges_an_amended_pair_apart():
     first = judge_union(contrasts(10, 2.0))
     mended = judge_union(contrasts(10, 2.0), amended=["C"], state=first.state)
     p = float(studentized_range_sf(2.0 / 0.3 * np.sqrt(2), 3, 12.5))
-    assert mended.pair("A", "C").p_value == pytest.approx(p / (0.05 * look_weight(1)))
+    assert mended.pair("A", "C").p_value == pytest.approx(p / (RESERVE / 2 * look_weight(1)))
     assert mended.pair("A", "B").p_now is None
 
 

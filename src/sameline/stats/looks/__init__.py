@@ -33,7 +33,7 @@ Example:
     >>> seen = unit_means([70.1, 69.8, 70.3, 70.0, 70.4, 69.9, 71.9, 72.2, 72.0], groups)
     >>> first = judge_open(seen, margin=1.0)
     >>> [(row.a, row.b, round(row.p_value, 4), row.verdict) for row in first.pairs]
-    [('A', 'B', 1.0, 'undecided'), ('A', 'C', 0.1222, 'undecided'), ('B', 'C', 0.1222, 'undecided')]
+    [('A', 'B', 1.0, 'undecided'), ('A', 'C', 0.2101, 'undecided'), ('B', 'C', 0.2101, 'undecided')]
     >>> stored = first.state.to_plain()
     >>> seen = unit_means([70.1, 69.8, 70.3, 70.0, 70.4, 69.9, 71.9, 72.2, 72.0, 70.2, 70.1, 72.1], [*groups, *"ABC"])
     >>> second = judge_open(seen, margin=1.0, state=LooksState.from_plain(stored))

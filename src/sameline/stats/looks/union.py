@@ -1,7 +1,7 @@
 """Any procedure, any number of looks: each judged look has its own share of the error rate (union bound).
 
 For unequal spread, ranks, or nested random effects no exact method for looks without end is known to us. If a
-procedure's family-adjusted p-value is valid at a single look, then judging the j-th look at alpha 6 / (pi^2 j^2) keeps
+procedure's family-adjusted p-value is valid at a single look, then judging the j-th look at alpha / (j (j + 1)) keeps
 the error rate over all looks at most alpha, whatever the looks have in common: the sharing is exact, the p-values are
 as good as the procedure. It is dear where many looks see nearly the same data. So a look is judged only when the units
 have grown by `growth` since the last one judged (the first counts; 1.0 judges every look); the looks between show
