@@ -10,7 +10,7 @@ import sys
 
 import typer
 
-from sameline.cli import ask, audit, bench, correct, files, plan, recorded, register, setup, tour
+from sameline.cli import ask, audit, bench, conform, correct, files, keep, picture, plan, recorded, register, setup, tour
 from sameline.errors import FindingsError, SamelineError
 
 app = typer.Typer(
@@ -25,7 +25,7 @@ app = typer.Typer(
 STOPPED = 130
 """The exit code where a person stopped the command."""
 
-for group in (setup, register, bench, files, recorded, correct, ask, plan, audit, tour):
+for group in (setup, register, bench, files, recorded, correct, ask, plan, picture, conform, audit, keep, tour):
     group.add_to(app)
 
 

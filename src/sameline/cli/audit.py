@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import sys
+from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
 
 import typer
@@ -19,10 +20,12 @@ from sameline.cli.common import (
     write,
     write_json,
 )
-from sameline.errors import CheckFailedError
+from sameline.errors import CallError, CheckFailedError
 
 if TYPE_CHECKING:
     from collections.abc import Callable
+
+    from sameline.ledger.checkpoint import Checkpoint
 
 
 def add_to(app: typer.Typer) -> None:
@@ -58,13 +61,21 @@ def trail(
     write(trail_text(entries))
 
 
-def verify(as_json: JsonOption = False, store: StoreOption = DEFAULT_STORE) -> None:
+def verify(
+    checkpoints: Annotated[
+        list[Path] | None,
+        typer.Option("--checkpoint", help="A checkpoint's file that the ledger must still agree with."),
+    ] = None,
+    as_json: JsonOption = False,
+    store: StoreOption = DEFAULT_STORE,
+) -> None:
     """Check all records, and compute every conclusion again.
 
     Every finding is named, and then the exit code is 1.
     """
+    given = [_checkpoint(path) for path in checkpoints or ()]
     with open_store(store) as lab:
-        report = lab.verify(_progress())
+        report = lab.verify(_progress(), given)
     if as_json:
         from sameline.reports.documents import verification_document
 
@@ -79,6 +90,15 @@ def verify(as_json: JsonOption = False, store: StoreOption = DEFAULT_STORE) -> N
             where=store,
             advice="keep the file as it is, and compare it with a backup or a checkpoint",
         )
+
+
+def _checkpoint(path: Path) -> Checkpoint:
+    from sameline.ledger.checkpoint import parse_checkpoint
+
+    try:
+        return parse_checkpoint(path.read_bytes())
+    except OSError as error:
+        raise CallError("the checkpoint cannot be read", where=str(path), advice="check the file's name") from error
 
 
 def _progress() -> Callable[[str, int, int], None] | None:

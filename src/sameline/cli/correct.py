@@ -35,6 +35,7 @@ def add_to(app: typer.Typer) -> None:
     app.command(context_settings=NEGATIVE_VALUES)(amend)
     app.command()(exclude)
     app.command()(restore)
+    app.command()(reverse)
 
 
 def amend(
@@ -89,4 +90,18 @@ def restore(
         words, what = lab.named(run=run, replicate=replicate, batch=batch)
         outcome = lab.restore(reason=reason, **what)
     say(f"{words} put back, entry {outcome.entry}")
+    say_changes(outcome, as_json=as_json)
+
+
+def reverse(
+    entry: Annotated[int, typer.Argument(help="Number of the entry, as `sameline trail` shows it.")],
+    reason: ReasonOption,
+    as_json: JsonOption = False,
+    store: StoreOption = DEFAULT_STORE,
+    by: ByOption = None,
+) -> None:
+    """Reverse a whole entry, such as a file taken in by mistake: its runs are set aside, its corrections undone."""
+    with open_store(store, by) as lab:
+        outcome = lab.reverse(entry, reason=reason)
+    say(f"entry {entry} reversed, entry {outcome.entry}")
     say_changes(outcome, as_json=as_json)

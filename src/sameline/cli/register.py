@@ -235,6 +235,37 @@ def restate_characteristic(
     )
 
 
+@restate_app.command("run")
+def restate_run(
+    run: Annotated[int, typer.Argument(help="Number of the run.")],
+    reason: ReasonOption,
+    batch: Annotated[str | None, typer.Option(help="Code of the batch that was tested.")] = None,
+    at: Annotated[str | None, typer.Option(help="When it was tested.")] = None,
+    analyst: Annotated[str | None, typer.Option(help="Who tested.")] = None,
+    instrument: Annotated[str | None, typer.Option(help="Code of the instrument.")] = None,
+    session: Annotated[str | None, typer.Option(help="Label of the occasion.")] = None,
+    note: Note = None,
+    store: StoreOption = DEFAULT_STORE,
+    by: ByOption = None,
+) -> None:
+    """State a run's particulars anew; its values stay, and so do the old particulars."""
+    with open_store(store, by) as lab:
+        changes = {
+            "batch": batch,
+            "tested_at": lab.moment(at),
+            "analyst": analyst,
+            "instrument": instrument,
+            "session": session,
+            "note": note,
+        }
+        given = {name: value for name, value in changes.items() if value is not None}
+        if not given:
+            raise CallError("there is nothing to state anew", advice="give at least one of the options")
+        outcome = lab.amend_run(run, reason=reason, **given)
+    say(f"run {run} restated, entry {outcome.entry}")
+    say_changes(outcome)
+
+
 def _restate(store: str, by: str | None, kind: str, code: str, reason: str, **changes: Any) -> None:  # noqa: ANN401
     given = {column: value for column, value in changes.items() if value is not None}
     if not given:

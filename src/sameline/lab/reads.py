@@ -13,6 +13,8 @@ from sameline.records.moments import read_moment
 from sameline.records.store import Reading, Store
 
 if TYPE_CHECKING:
+    from pathlib import Path
+
     import pandas as pd
 
     from sameline.conclusions.diagnosis import Diagnosis
@@ -21,7 +23,9 @@ if TYPE_CHECKING:
     from sameline.ledger.checkpoint import Checkpoint
     from sameline.records.answers import Answer, Conclusion
     from sameline.records.drafts import DraftMeasurement, Register
+    from sameline.records.findings import LedgerReport
     from sameline.records.runs import Measurement
+    from sameline.records.signing import PersonKey
     from sameline.records.trail import TrailEntry
     from sameline.reports.subject import Subject
     from sameline.stats.nested.fit import NestedFit
@@ -159,6 +163,25 @@ class Reads:
         from sameline.conclusions.recompute import verify
 
         return verify(self._store, progress, checkpoints)
+
+    def keys(self, as_of: int | str | None = None) -> list[PersonKey]:
+        """The public keys that persons sign with, oldest first."""
+        from sameline.records.signing import read_keys
+
+        with self.reading(as_of) as reading:
+            return read_keys(reading)
+
+    def backup(self, path: Path) -> LedgerReport:
+        """Copy the store to a new file while others use it, and check the copy."""
+        from sameline.records.copying import backup
+
+        return backup(self._store, path)
+
+    def copy(self, place: str) -> LedgerReport:
+        """Copy the store to another database, of either kind; ledger and root stay what they are."""
+        from sameline.records.copying import copy_store
+
+        return copy_store(self._store, place)
 
     def moment(self, text: str | None) -> str | None:
         """A moment as a person writes it, as the store keeps it; without a zone it is in the laboratory's."""

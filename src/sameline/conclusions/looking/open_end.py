@@ -11,7 +11,7 @@ from dataclasses import replace
 from typing import TYPE_CHECKING, Any
 
 from sameline.conclusions.looking.telling import told
-from sameline.conclusions.looking.view import Looking, Plain, remembered, state_before, unit_means_seen
+from sameline.conclusions.looking.view import Looking, Plain, kept_reserve, remembered, state_before, unit_means_seen
 
 if TYPE_CHECKING:
     from sameline.conclusions.judged import Judged
@@ -27,15 +27,17 @@ def judge_without_end(looking: Looking) -> Judged:
 
     memory = {} if looking.past.state is None else remembered(looking.past.state)
     phi, founders = _tuning(looking, memory), _founders(looking, memory)
+    reserve = kept_reserve(looking, memory)
     length = looking.revision.window_units
     alpha = looking.revision.alpha
     if length is None:
-        result = _judge(looking, looking.units, memory.get("state"), alpha, phi, founders)
-        return told(looking, result, {"founders": founders, "phi": phi})
-    whole = _judge(looking, looking.units, memory.get("state"), window_alpha(alpha, 0), phi, founders)
-    windows = _windows(looking, length, memory.get("windows", {}), phi)
-    extra = {"founders": founders, "phi": phi, "windows": {n: w.state.to_plain() for n, w in windows.items()}}
-    return told(looking, _together(whole, windows, alpha), extra)
+        result = _judge(looking, looking.units, memory.get("state"), alpha, phi, founders, reserve)
+        return told(looking, result, {"founders": founders, "phi": phi, "reserve": reserve})
+    whole = _judge(looking, looking.units, memory.get("state"), window_alpha(alpha, 0), phi, founders, reserve)
+    windows = _windows(looking, length, memory.get("windows", {}), phi, reserve)
+    states = {number: window.state.to_plain() for number, window in windows.items()}
+    kept = {"founders": founders, "phi": phi, "reserve": reserve, "windows": states}
+    return told(looking, _together(whole, windows, alpha), kept)
 
 
 def _judge(
@@ -45,15 +47,17 @@ def _judge(
     alpha: float,
     phi: float,
     founders: list[str] | None,
+    reserve: float,
 ) -> LookResult:
     from sameline.stats.looks import judge_open, open_looks
 
     seen = unit_means_seen(looking, units)
     control = looking.inputs.control
-    rule = open_looks.rule_of(phi, founders=None if founders is None else tuple(founders), control=control)
+    rule = open_looks.rule_of(phi, reserve, founders=None if founders is None else tuple(founders), control=control)
     return judge_open(
         seen,
         phi=phi,
+        reserve=reserve,
         alpha=alpha,
         margin=looking.inputs.margin,
         control=control,
@@ -63,7 +67,9 @@ def _judge(
     )
 
 
-def _windows(looking: Looking, length: int, stored: dict[str, Any], phi: float) -> dict[str, LookResult]:
+def _windows(
+    looking: Looking, length: int, stored: dict[str, Any], phi: float, reserve: float
+) -> dict[str, LookResult]:
     """Each window that has begun, judged on its own units; a comparison by windows lists its groups."""
     from sameline.stats.looks import window_alpha, window_of
 
@@ -72,7 +78,9 @@ def _windows(looking: Looking, length: int, stored: dict[str, Any], phi: float) 
         by_window.setdefault(window_of(unit.place, length), []).append(unit)
     alpha = looking.revision.alpha
     return {
-        str(number): _judge(looking, tuple(units), stored.get(str(number)), window_alpha(alpha, number), phi, None)
+        str(number): _judge(
+            looking, tuple(units), stored.get(str(number)), window_alpha(alpha, number), phi, None, reserve
+        )
         for number, units in sorted(by_window.items())
     }
 

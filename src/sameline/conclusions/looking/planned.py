@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from sameline.conclusions.looking.telling import told
-from sameline.conclusions.looking.view import Looking, remembered, state_before, unit_means_seen
+from sameline.conclusions.looking.view import Looking, kept_reserve, remembered, state_before, unit_means_seen
 
 if TYPE_CHECKING:
     from sameline.conclusions.judged import Judged
@@ -16,7 +16,9 @@ def judge_up_to_plan(looking: Looking) -> Judged:
     from sameline.stats.looks import Plan, judge_planned, planned
 
     revision = looking.revision
-    plan = Plan(units=revision.final_units or 0, spending=revision.spending or "obrien-fleming")  # type: ignore[arg-type]
+    reserve = kept_reserve(looking, remembered(looking.past.state))
+    spending: Any = revision.spending or "obrien-fleming"
+    plan = Plan(units=revision.final_units or 0, spending=spending, reserve=reserve)
     seen = unit_means_seen(looking, looking.units)
     result = judge_planned(
         seen,
@@ -31,4 +33,4 @@ def judge_up_to_plan(looking: Looking) -> Judged:
             seen.labels,
         ),
     )
-    return told(looking, result, {})
+    return told(looking, result, {"reserve": reserve})

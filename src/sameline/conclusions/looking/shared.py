@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from sameline.conclusions.looking.telling import told
-from sameline.conclusions.looking.view import Looking, remembered, state_before
+from sameline.conclusions.looking.view import Looking, kept_reserve, remembered, state_before
 
 if TYPE_CHECKING:
     from sameline.conclusions.judged import Judged
@@ -22,19 +22,23 @@ def judge_by_shares(looking: Looking) -> Judged:
     procedure = "studentized range"
     if revision.procedure not in _STUDENTIZED_RANGE:
         procedure = f"{revision.procedure} on the {revision.model} model"
-    state = state_before(remembered(looking.past.state).get("state"), "union", union.rule_of(procedure=procedure), None)
-    own = {} if procedure == "studentized range" else _own_figures(looking, usable, state)
+    reserve = kept_reserve(looking, remembered(looking.past.state))
+    state = state_before(
+        remembered(looking.past.state).get("state"), "union", union.rule_of(reserve=reserve, procedure=procedure), None
+    )
+    own = {} if procedure == "studentized range" else _own_figures(looking, usable, state, reserve)
     result = judge_union(
         _contrasts(looking, usable),
         alpha=revision.alpha,
         margin=looking.inputs.margin,
         procedure=procedure,
+        reserve=reserve,
         amended=[label for label in looking.past.amended if label in looking.alone.groups],
         state=state,
         p_values=own.get("p_values"),
         half_widths=own.get("half_widths"),
     )
-    return told(looking, result, {})
+    return told(looking, result, {"reserve": reserve})
 
 
 _STUDENTIZED_RANGE = ("tukey-kramer", "games-howell")  # both refer each pair's own t and df to the studentized range
@@ -53,11 +57,13 @@ def _contrasts(looking: Looking, usable: list[PairAnswer]) -> Contrasts:
     )
 
 
-def _own_figures(looking: Looking, usable: list[PairAnswer], state: LooksState | None) -> dict[str, list[float]]:
+def _own_figures(
+    looking: Looking, usable: list[PairAnswer], state: LooksState | None, reserve: float
+) -> dict[str, list[float]]:
     """Another procedure's p-values, and its intervals at the error rate that this look may spend."""
     from sameline.stats.looks import rate_of_look
 
-    rate = rate_of_look(len(looking.units), looking.revision.alpha, state)
+    rate = rate_of_look(len(looking.units), looking.revision.alpha, state, reserve=reserve)
     at_rate = {(p.a, p.b): p for p in (looking.alone if rate is None else looking.again(rate)).pairs}
     return {
         "p_values": [p.p_value or 0.0 for p in usable],

@@ -79,6 +79,13 @@ def remembered(state: str | None) -> dict[str, Any]:
     return found
 
 
+def kept_reserve(looking: Looking, memory: Plain) -> float:
+    """The share of the error rate kept for amended data: fixed at the first look, whatever the default is later."""
+    from sameline.stats.looks.amendments import RESERVE
+
+    return RESERVE if looking.past.restated else float(memory.get("reserve", RESERVE))
+
+
 def kept_text(state: dict[str, Any]) -> str:
     """What the next look must remember, as the store keeps it."""
     return canonical(state).decode()
