@@ -115,3 +115,13 @@ def test_a_value_replaced_and_everything_made_anew(sqlite_store: str):
     findings = _made_anew(sqlite_store, t.measurement, 8, value=75.0)
     assert {f.check for f in findings} >= {8}
     assert all("otherwise" in f.problem or "other values" in f.problem for f in findings)
+
+
+def test_the_history_of_a_conclusion_replaced_and_everything_made_anew(sqlite_store: str):
+    findings = _made_anew(sqlite_store, t.conclusion_turn, 1, because="chance")
+    assert ["turns 1 because" in f.problem for f in findings] == [True]
+
+
+def test_a_count_of_looks_replaced_and_everything_made_anew(sqlite_store: str):
+    findings = _made_anew(sqlite_store, t.conclusion, 11, look=1)
+    assert any(f.row == 11 and "look: recorded 1" in f.problem for f in findings)

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import replace
+from dataclasses import dataclass, replace
 
 from sqlalchemy import select
 
@@ -13,7 +13,7 @@ from sameline.conclusions.past import NO_PAST, past_of
 from sameline.conclusions.turns import because, turns
 from sameline.records import concluded
 from sameline.records.acts import Act
-from sameline.records.answers import Answer, Conclusion
+from sameline.records.answers import Answer, Conclusion, Turn
 from sameline.records.comparisons import Revision, read_revision
 from sameline.records.scope import behind, touches_since
 from sameline.records.store import Reading, Store
@@ -66,34 +66,52 @@ def _last_if_up_to_date(act: Act, comparison: int) -> int | None:
     return None if last is None or comparison in behind(reading) else last.version
 
 
+@dataclass(frozen=True, slots=True)
+class Place:
+    """Where an answer stands in its comparison's history.
+
+    Attributes:
+        version: counted from 1.
+        look: of the comparison; a look is a version computed on other data than the one before; no data, no look.
+        causes: the entries that touched the comparison since the version before.
+        turns: the verdicts that changed against it.
+    """
+
+    version: int
+    look: int
+    causes: tuple[int, ...]
+    turns: tuple[Turn, ...]
+
+
+def place_of(reading: Reading, comparison: int, found: Answer) -> Place:
+    """Where an answer from the records as of a reading stands, after the conclusions recorded by then."""
+    before = concluded.latest(reading, comparison)
+    causes = touches_since(reading.connection, comparison, before.position if before else 0, reading.position)
+    turned = turns(before.answer if before else None, found, because(_acts(reading, causes)))
+    if before is None:
+        return Place(1, int(found.runs > 0), tuple(causes), turned)
+    looked_again = found.inputs != before.answer.inputs
+    return Place(before.version + 1, before.look + looked_again, tuple(causes), turned)
+
+
 def _conclude(act: Act, comparison: int) -> int:
     reading = Reading(act.connection, act.number - 1)
     revision = read_revision(reading, comparison)
     found = answer_as_of(reading, revision)
-    before = concluded.latest(reading, comparison)
-    causes = touches_since(act.connection, comparison, before.position if before else 0, reading.position)
-    version, look = _numbers(before, found)
+    place = place_of(reading, comparison, found)
     concluded.record(
         act,
         revision,
         found,
-        version=version,
-        look=look,
+        version=place.version,
+        look=place.look,
         position=reading.position,
-        causes=causes,
-        turns=turns(before.answer if before else None, found, because(_acts(act, causes))),
+        causes=place.causes,
+        turns=place.turns,
     )
-    return version
+    return place.version
 
 
-def _numbers(before: Conclusion | None, found: Answer) -> tuple[int, int]:
-    """Version and look: a look is a version computed on other data than the one before; no data, no look."""
-    if before is None:
-        return 1, int(found.runs > 0)
-    looked_again = found.inputs != before.answer.inputs
-    return before.version + 1, before.look + looked_again
-
-
-def _acts(act: Act, causes: Sequence[int]) -> list[str]:
+def _acts(reading: Reading, causes: Sequence[int]) -> list[str]:
     query = select(entry.c.act).where(entry.c.number.in_(causes)).order_by(entry.c.number)
-    return list(act.connection.execute(query).scalars())
+    return list(reading.connection.execute(query).scalars())

@@ -11,7 +11,7 @@ from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, fields, is_dataclass, replace
 from typing import Any
 
-from sameline.conclusions.conclude import answer_as_of
+from sameline.conclusions.conclude import Place, answer_as_of, place_of
 from sameline.conclusions.inputs import gather
 from sameline.conclusions.models import engine
 from sameline.ledger.checkpoint import Checkpoint
@@ -33,6 +33,7 @@ CHECKS = (
     "every conclusion, computed again from the rows as of its look",
     "every comparison: none left behind unseen",
     "each checkpoint that is given: the ledger still begins with its entries",
+    "each signature on a conclusion: by a key that held, over what the record says",
 )
 """What verification checks, in the order of the findings' numbers (from 1)."""
 
@@ -87,7 +88,7 @@ def _as_far_as_possible(check: int, findings: Iterator[Finding]) -> list[Finding
 
 
 def _conclusions(reading: Reading, tell: Progress, done: list[int]) -> Iterator[Finding]:
-    """8. Every conclusion, in the order in which they were recorded; `done` gets a number for each."""
+    """8. Every conclusion with its place in its history, in the order of recording; `done` gets a number for each."""
     recorded = concluded.all_versions(reading)
     for number, (comparison, version) in enumerate(recorded, 1):
         yield from _conclusion(reading, comparison, version)
@@ -102,12 +103,14 @@ def _conclusion(reading: Reading, comparison: int, version: int) -> Iterator[Fin
         then = replace(reading, position=conclusion.position, latest=False)
         revision = comparisons.read_revision(then, comparison, revision_id=conclusion.revision_id)
         again = answer_as_of(then, revision)
+        place = place_of(then, comparison, again)
     except Exception as error:  # noqa: BLE001 - damaged records can break any step, and that is the finding
         what = f"{conclusion.name} v{version}" if conclusion else f"comparison {comparison} v{version}"
         yield Finding(8, "conclusion", None, None, None, f"{what} cannot be computed again: {error}")
         return
     tolerance = 0.0 if conclusion.answer.engine in {engine(), ""} else TOLERANCE
-    different = list(differences(conclusion.answer, again, tolerance))
+    recorded = Place(conclusion.version, conclusion.look, conclusion.causes, conclusion.turns)
+    different = [*differences(conclusion.answer, again, tolerance), *_differences("", recorded, place, 0.0)]
     if different:
         where = "; ".join(different[:3]) + (f"; and {len(different) - 3} more" if len(different) > 3 else "")
         problem = f"{conclusion.name} v{version} comes out otherwise when computed again: {where}"
