@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import cached_property
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -53,6 +54,20 @@ class Paths:
     replicate_means: Floats
     replicate_ss: Floats
     replicate_df: Floats
+
+    @cached_property
+    def welch(self) -> tuple[Floats, Floats, Floats, NDArray[np.bool_]]:
+        """(B, J, M) |t|, df, squared standard error of each pair by its own variances; where they exist."""
+        a, b = pair_indices(self.n.shape[-1])
+        variance = self.own_ss / np.maximum(self.n - 1, 1) / np.maximum(self.n, 1)
+        both = variance[..., a] + variance[..., b]
+        there = (np.minimum(self.n[..., a], self.n[..., b]) > 1) & (both > 0)
+        safe = np.where(there, both, 1.0)
+        degrees = np.maximum(self.n - 1, 1)
+        parts = variance[..., a] ** 2 / degrees[..., a] + variance[..., b] ** 2 / degrees[..., b]
+        df = np.where(there, np.maximum(safe**2 / np.where(there, parts, 1.0), 1.0), 1.0)
+        t = np.where(there, np.abs(self.means[..., b] - self.means[..., a]) / np.sqrt(safe), 0.0)
+        return t, df, safe, there
 
 
 def simulate(scene: Scene, size: int, seed: int) -> Paths:
@@ -169,7 +184,7 @@ def _bound_of_everyone(paths: Paths) -> Floats:
 def first_interval_miss(paths: Paths, alpha: float) -> Floats:
     """(B,) first look at which some pair's interval leaves out 0 (true when all means are equal); inf for never."""
     groups = paths.n.shape[-1]
-    if groups > FEW:
+    if is_even(paths.n):
         n = paths.n[..., 0]
         apart = (paths.means.max(-1) - paths.means.min(-1)) / pooled_sd(paths) * np.sqrt(n / 2)
         return first_true(apart >= critical_t(paths.df, n / 2, PHI, 2 * alpha / (groups * (groups - 1))))
@@ -187,23 +202,28 @@ def first_true(hit: NDArray[np.bool_]) -> Floats:
     return np.where(hit.any(axis=1), hit.argmax(axis=1) + 1.0, np.inf)
 
 
-def largest_q(n: Floats, means: Floats, ss: Floats, df: Floats, pairs: NDArray[np.bool_] | None = None) -> Floats:
-    """(B, J) largest studentized difference, pooled variance, over the asked pairs."""
+def largest_q(n: Floats, means: Floats, ss: Floats, df: Floats) -> Floats:
+    """(B, J) largest studentized difference, pooled variance."""
+    sd = np.where(df > 0, np.sqrt(ss / np.maximum(df, 1.0)), np.inf)
+    if is_even(n):
+        return (means.max(-1) - means.min(-1)) * np.sqrt(n[..., 0]) / sd
     a, b = pair_indices(n.shape[-1])
-    if pairs is not None:
-        a, b = a[pairs], b[pairs]
-    per = 0.5 / n[..., a] + 0.5 / n[..., b] if n.shape[-1] <= FEW else (1.0 / n[..., :1])
-    gap = np.abs(means[..., b] - means[..., a])
-    with np.errstate(divide="ignore", invalid="ignore"):
-        q = (gap / np.sqrt(per)).max(-1) / np.sqrt(ss / df)
-    return np.where(df > 0, q, 0.0)
+    gap = np.abs(means[..., b] - means[..., a]) / np.sqrt(0.5 / n[..., a] + 0.5 / n[..., b])
+    return gap.max(-1) / sd
+
+
+def is_even(n: Floats) -> bool:
+    """Whether all groups have the same number of units at every look."""
+    return bool((n == n[..., :1]).all())
 
 
 def critical_q(rate: Floats, groups: int, df: Floats) -> Floats:
-    """Studentized range quantiles for few distinct (rate, df), by table; arguments of one shape."""
-    keys = np.stack([rate.ravel(), np.maximum(df, 1).ravel()])
-    unique, back = np.unique(keys, axis=1, return_inverse=True)
-    table = np.asarray(studentized_range_isf(unique[0], groups, unique[1]))
+    """Studentized range quantiles for few distinct (rate, df), by table; arguments of one shape (B, ...)."""
+    if df.ndim == 2 and (df == df[:1]).all() and (rate == rate[:1]).all():
+        return np.broadcast_to(studentized_range_isf(rate[:1], groups, np.maximum(df[:1], 1.0)), df.shape)
+    keys = (np.maximum(df, 1.0) + 1j * rate).ravel()
+    unique, back = np.unique(keys, return_inverse=True)
+    table = np.asarray(studentized_range_isf(unique.imag, groups, unique.real))
     return table[back.ravel()].reshape(rate.shape)
 
 
@@ -215,9 +235,9 @@ def first_union(paths: Paths, rate: float, growth: float, *, own_spreads: bool) 
     if not own_spreads:
         crossed = largest_q(paths.n, paths.means, paths.ss, paths.df) >= critical_q(rates, groups, paths.df)
         return first_true(crossed & (number > 0))
-    t, df, _, there = welch(paths)
+    t, df, _, there = paths.welch
     q = t * math.sqrt(2.0)
-    there &= number[..., None] > 0
+    there = there & (number[..., None] > 0)
     df = np.where(there, np.minimum(np.floor(df), 400.0), 1.0)
     spread = np.broadcast_to(rates[..., None], df.shape)
     crossed = np.zeros(df.shape, dtype=bool)
@@ -227,26 +247,12 @@ def first_union(paths: Paths, rate: float, growth: float, *, own_spreads: bool) 
     return first_true(crossed.any(-1))
 
 
-def welch(paths: Paths) -> tuple[Floats, Floats, Floats, NDArray[np.bool_]]:
-    """(B, J, M) |t|, degrees of freedom, squared standard error of each pair by its own variances; where they exist."""
-    a, b = pair_indices(paths.n.shape[-1])
-    variance = paths.own_ss / np.maximum(paths.n - 1, 1) / np.maximum(paths.n, 1)
-    both = variance[..., a] + variance[..., b]
-    there = (np.minimum(paths.n[..., a], paths.n[..., b]) > 1) & (both > 0)
-    safe = np.where(there, both, 1.0)
-    degrees = np.maximum(paths.n - 1, 1)
-    parts = variance[..., a] ** 2 / degrees[..., a] + variance[..., b] ** 2 / degrees[..., b]
-    df = np.where(there, np.maximum(safe**2 / np.where(there, parts, 1.0), 1.0), 1.0)
-    t = np.where(there, np.abs(paths.means[..., b] - paths.means[..., a]) / np.sqrt(safe), 0.0)
-    return t, df, safe, there
-
-
 def first_contrasts(paths: Paths, alpha: float, unit_sd: float) -> Floats:
     """(B,) first look at which `judge_open_contrasts` claims any pair, contrasts by Welch; inf for never.
 
     With the pairs' evidence alone some pair is claimed exactly when Bonferroni claims the best one.
     """
-    t, df, squared_error, there = welch(paths)
+    t, df, squared_error, there = paths.welch
     logs = np.where(there, log_e_value(t, df, unit_sd**2 / squared_error, PHI), 0.0)
     return first_true(logs.max(-1) >= np.log(logs.shape[-1] / alpha))
 

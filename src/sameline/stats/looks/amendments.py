@@ -73,10 +73,10 @@ def next_memories(
     old = state.memory()
     memories = {}
     for a, b in pairs:
-        kept = old.get((a, b), PairMemory(a, b, version=state.version))
+        kept = old.get((a, b)) or PairMemory(a, b, version=state.version)
         if counts and (a in touched or b in touched):
             kept = PairMemory(a, b, version=opened.amendments)
-        memories[a, b] = replace(kept, since=kept.since + 1)
+        memories[a, b] = kept.counted()
     return opened, memories
 
 

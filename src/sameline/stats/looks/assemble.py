@@ -86,7 +86,7 @@ def assemble(
 
 def _one(heading: Heading, memory: PairMemory, found: PairInput) -> tuple[PairAtLook, PairMemory]:
     p_value = memory.p_value if found.missing or found.p_now is None else min(memory.p_value, found.p_now)
-    after = replace(memory, p_value=p_value)
+    after = memory.with_p(p_value)
     differs = p_value <= heading.alpha
     if found.missing:
         word = verdict(None, None, heading.margin, differs)

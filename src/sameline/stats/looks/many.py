@@ -18,6 +18,7 @@ means. The bound only ever makes p larger. Cost k^2 numbers a size of block, k^3
 
 from __future__ import annotations
 
+from functools import lru_cache
 from itertools import combinations
 from typing import TYPE_CHECKING
 
@@ -121,7 +122,7 @@ def log_lead_bounds(means: Floats, n: Floats, ss_within: Floats, df: Floats, phi
     a, b = pair_indices(groups)
     low, high = np.minimum(means[..., a], means[..., b])[..., None], np.maximum(means[..., a], means[..., b])[..., None]
     size = np.arange(3, groups + 1)
-    smallest, largest = _sums_of_others(means, a, b)
+    smallest, largest = _sums_of_others(means)
     up_least = high - (low + largest) / (size - 1)
     down_least = (high + smallest) / (size - 1) - low
     half = (high - low) * size / (size - 1) / 2.0
@@ -136,18 +137,25 @@ def log_lead_bounds(means: Floats, n: Floats, ss_within: Floats, df: Floats, phi
     return np.where(usable[..., None, None], logs, -np.inf)
 
 
-def _sums_of_others(values: Floats, a: Ints, b: Ints) -> tuple[Floats, Floats]:
+def _sums_of_others(values: Floats) -> tuple[Floats, Floats]:
     """Sums of the 1, ..., k-2 smallest, and largest, of the values of the groups other than a and b, (..., M, k-2)."""
-    groups = values.shape[-1]
-    others = np.array([[x for x in range(groups) if x not in (i, j)] for i, j in zip(a, b, strict=True)])
-    ordered = np.sort(values[..., others], axis=-1)
+    ordered = np.sort(values[..., _others(values.shape[-1])], axis=-1)
     return np.cumsum(ordered, axis=-1), np.cumsum(ordered[..., ::-1], axis=-1)
+
+
+@lru_cache(maxsize=16)
+def _others(groups: int) -> Ints:
+    """(M, k-2): the groups that are not in a pair."""
+    table = np.broadcast_to(np.arange(groups), (groups * (groups - 1) // 2, groups))
+    a, b = pair_indices(groups)
+    others: Ints = table[(table != a[:, None]) & (table != b[:, None])].reshape(-1, groups - 2)
+    return others
 
 
 def _units_of_lead(n: Floats, a: Ints, b: Ints) -> tuple[Floats, Floats]:
     """Fewest and most units the contrast of a (or b) with the plain mean of c-1 others can have, (..., M, k-2)."""
     inverse = 1.0 / np.where(n > 0, n, 1.0)
-    smallest, largest = _sums_of_others(inverse, a, b)
+    smallest, largest = _sums_of_others(inverse)
     others = np.arange(3, n.shape[-1] + 1) - 1
     one, two = inverse[..., a][..., None], inverse[..., b][..., None]
     worst = np.maximum(one + (two + largest) / others**2, two + (one + largest) / others**2)

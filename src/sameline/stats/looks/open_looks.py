@@ -97,21 +97,22 @@ def judge_open(
     opened, memories = next_memories(remembered(state, "open", rule), figures.pairs, touched)
     opened = _fixed_groups(opened, seen.labels, joining=first is not None)
     p_closed, logs = _closed(seen, first, phi, control=control is not None)
-    shares = interval_shares(len(seen.labels), first, control=control is not None)
+    part = np.array([version_share(reserve, memory.version) for memory in memories.values()])
+    shares = interval_shares(len(seen.labels), first, control=control is not None) * part
+    widths = _half_widths(figures, seen.df, phi, shares * alpha)
     alone = single_p(seen, figures, control=control is not None)
     inputs = []
     for at, memory in enumerate(memories.values()):
-        share = float(shares[at]) * version_share(reserve, memory.version)
         inputs.append(
             PairInput(
                 missing=figures.missing[at],
                 difference=float(figures.difference[at]),
                 standard_error=float(figures.standard_error[at]),
                 df=seen.df,
-                half_width=_half_width(figures, at, seen.df, phi, share * alpha),
+                half_width=float(widths[at]),
                 p_now=overall_p(memory, float(p_closed[at]), reserve, spends_by_look=False),
                 p_single=float(alone[at]),
-                share=share,
+                share=float(shares[at]),
                 log_evidence=float(logs[at]),
             )
         )
@@ -183,10 +184,13 @@ def _closed_of_first(means: Floats, n: Floats, ss: Floats, df: Floats, phi: floa
     return closed_p_many(means, n, ss, df, phi)
 
 
-def _half_width(figures: PairFigures, at: int, df: float, phi: float, rate: float) -> float:
-    if figures.missing[at] or rate <= 0:
-        return float("inf")
-    return float(critical_t(df, figures.units[at], phi, rate)) * float(figures.standard_error[at])
+def _half_widths(figures: PairFigures, df: float, phi: float, rates: Floats) -> Floats:
+    """Half lengths of the intervals, (m,); `inf` where nothing bounds the difference."""
+    there = np.array([not reason for reason in figures.missing]) & (rates > 0)
+    t = critical_t(df, figures.units, phi, np.where(there, rates, 0.5))
+    return np.where(there, np.where(np.isfinite(t), t, 0.0) * figures.standard_error, np.inf) + np.where(
+        np.isfinite(t), 0.0, np.inf
+    )
 
 
 def judge_open_contrasts(

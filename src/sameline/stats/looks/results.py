@@ -37,6 +37,15 @@ class PairMemory:
     lower: float | None = None
     upper: float | None = None
 
+    # written out, for dataclasses.replace is slow and a look may have many pairs
+    def counted(self) -> PairMemory:
+        """The memory with one more look since its version began."""
+        return PairMemory(self.a, self.b, self.p_value, self.version, self.since + 1, self.lower, self.upper)
+
+    def with_p(self, p_value: float) -> PairMemory:
+        """The memory with another p-value."""
+        return PairMemory(self.a, self.b, p_value, self.version, self.since, self.lower, self.upper)
+
 
 @dataclass(frozen=True, slots=True)
 class PlannedLook:
