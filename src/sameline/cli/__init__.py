@@ -10,7 +10,21 @@ import sys
 
 import typer
 
-from sameline.cli import ask, audit, bench, conform, correct, files, keep, picture, plan, recorded, register, setup, tour
+from sameline.cli import (
+    ask,
+    audit,
+    bench,
+    conform,
+    correct,
+    files,
+    keep,
+    picture,
+    plan,
+    recorded,
+    register,
+    setup,
+    tour,
+)
 from sameline.errors import FindingsError, SamelineError
 
 app = typer.Typer(
