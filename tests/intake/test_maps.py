@@ -252,4 +252,4 @@ def test_a_column_that_the_map_does_not_know_is_asked_about(take: Take):
     form = HeadingMap("rig", tuple(MapColumn(*column) for column in columns))
     (finding,) = take("Lot,P,D,x,V,V\nB-117,TS,2026-03-04,,12.5,12.6\n", maps=[form]).findings
     assert (finding.column, finding.question) == ("V", True)
-    assert finding.problem == "the map 'rig' does not say what the column 'V' is"
+    assert finding.problem == "the column 'V' is not in the map 'rig'"

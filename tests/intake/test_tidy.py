@@ -328,3 +328,11 @@ def test_the_order_of_rows_changes_no_run(rows: list[tuple[str, int, object]], s
     as_set = [{(run.batch, run.tested_at, run.measurements) for run in intake.runs} for intake in (first, second)]
     assert as_set[0] == as_set[1]
     assert sum(len(run.measurements) for run in second.runs) == len(rows)
+
+
+def test_very_many_unknown_columns_are_counted(take: Take):
+    strange = ",".join(f"strange {number}" for number in range(12_000))
+    intake = take(f"batch,characteristic,tested_at,value,{strange}\nB-117,TS,2026-03-04,12.5{',' * 12_000}\n")
+    assert len(intake.runs) == 1
+    assert len(intake.questions) == 51
+    assert "11950 further columns are as unknown" in {finding.problem for finding in intake.questions}

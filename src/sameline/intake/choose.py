@@ -20,6 +20,7 @@ from sameline.intake.nearest import Nearest, did_you_mean
 from sameline.intake.tables import Row, Table, UnreadableError, head
 
 Chosen = tuple[Table, Layout]
+_NAMED = 50  # unknown columns that are named one by one
 
 
 def choose_layout(ways: Sequence[Table], maps: Sequence[HeadingMap], book: FindingBook) -> Chosen | None:
@@ -47,38 +48,21 @@ def choose_layout(ways: Sequence[Table], maps: Sequence[HeadingMap], book: Findi
         fitting = _fitting(rows, maps)
         if len(fitting) == 1:
             form, number, headings = fitting[0]
-            for heading in form.unknown(headings):
-                problem = f"the map {form.name!r} does not say what the column {heading!r} is"
-                book.add(number, heading, heading, problem, "it would not be read", question=True)
-            return table, layout_of(form, number, headings, dict(rows).get(number + 1, ()))
-        if fitting:
-            names = ", ".join(repr(form.name) for form, _, _ in fitting)
-            book.add(fitting[0][1], None, None, f"several maps fit these headings: {names}", "say which one is meant")
-            return None
-    return None
-
-
-def _own(rows: list[Row], book: FindingBook) -> Layout | None:
-    """The layout of a table with our own headings."""
-    for number, row in rows:
-        headings = trimmed(row)
-        form = own_map(headings)
-        if form.missing():
-            continue
-        folded = [fold(column.heading) for column in form.columns]
-        for heading in dict.fromkeys(folded):
-            if folded.count(heading) > 1:
-                book.add(
-                    number, heading, heading, f"the heading {heading!r} is there more than once", "keep one of them"
-                )
-                return None
-        nearest = Nearest(FIELDS[:-1])
-        for heading in strange(headings):
-            near = did_you_mean(nearest.to(fold(heading)))
-            problem = f"the column {heading!r} is none of ours"
-            book.add(number, heading, heading, problem, near or "it would not be read", question=True)
+            _ask_columns(book, number, strange(headings), "is none of ours", nearest)
         return layout_of(form, number, headings)
     return None
+
+
+def _ask_columns(
+    book: FindingBook, row: int, columns: Sequence[str], says: str, nearest: Nearest | None = None
+) -> None:
+    """Ask about columns that would not be read; many more are counted only."""
+    for heading in columns[:_NAMED]:
+        near = did_you_mean(nearest.to(fold(heading))) if nearest else None
+        book.add(row, heading, heading, f"the column {heading!r} {says}", near or "it would not be read", question=True)
+    if len(columns) > _NAMED:
+        problem = f"{len(columns) - _NAMED} further columns are as unknown"
+        book.add(row, None, None, problem, "they would not be read", question=True)
 
 
 def _fitting(rows: list[Row], maps: Sequence[HeadingMap]) -> list[tuple[HeadingMap, int, list[str]]]:

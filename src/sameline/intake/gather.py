@@ -53,8 +53,9 @@ class Group:
 
     def rows(self) -> list[int]:
         """The rows that belong to it."""
-        gaps = {row for start, end in self.breaks or () for row in range(start, end)}
-        return [row for row in range(self.first, self.next) if row not in gaps]
+        starts = [self.first, *(end for _, end in self.breaks or ())]
+        ends = [*(start for start, _ in self.breaks or ()), self.next]
+        return [row for start, end in zip(starts, ends, strict=True) for row in range(start, end)]
 
 
 @dataclass(frozen=True, slots=True)

@@ -13,7 +13,7 @@ from collections.abc import Iterable
 _ALIKE = str.maketrans({"l": "1", "i": "1", "|": "1", "!": "1", "o": "0", "q": "0", "s": "5", "z": "2", "b": "8"})
 _LONGEST = 64
 _LIKENESS_UP_TO = 2_000  # codes; general likeness costs some microseconds for each
-_LIKENESS_TIMES = 200  # texts; a file with more unknown codes than this is not helped by more suggestions
+_TIMES = 500  # texts; a file with more unknown codes than this is not helped by more suggestions
 
 
 def looks(code: str) -> str:
@@ -34,7 +34,7 @@ class Nearest:
         self._looks: dict[str, str] = {}
         for code in self._codes:
             self._looks.setdefault(looks(code), code)
-        self._left = _LIKENESS_TIMES
+        self._left = _TIMES
         self._alphabet = sorted({sign for look in self._looks for sign in look})
 
     def to(self, text: str) -> str | None:
@@ -42,12 +42,14 @@ class Nearest:
         look = looks(text[:_LONGEST])
         if look in self._looks:
             return self._looks[look]
+        self._left -= 1
+        if self._left < 0:
+            return None
         for slip in self._one_slip(look):
             if slip in self._looks:
                 return self._looks[slip]
-        if len(self._codes) > _LIKENESS_UP_TO or self._left <= 0:
+        if len(self._codes) > _LIKENESS_UP_TO:
             return None
-        self._left -= 1
         near = difflib.get_close_matches(text[:_LONGEST], self._codes, n=1, cutoff=0.6)
         return near[0] if near else None
 
