@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import contextlib
 import io
+import json
 import re
 import shlex
 from collections.abc import Iterator
@@ -125,6 +126,9 @@ def ran(line: str, monkeypatch: pytest.MonkeyPatch) -> str:
         monkeypatch.setenv(*arguments[0].split("=", 1))
         return ""
     assert word == "sameline", line
+    if "KEY" in arguments:
+        (key,) = json.loads(ran("sameline key list --json", monkeypatch))
+        arguments[arguments.index("KEY")] = key["key"]
     out, err = io.StringIO(), io.StringIO()
     with contextlib.redirect_stdout(out), contextlib.redirect_stderr(err):
         code = run(arguments)
