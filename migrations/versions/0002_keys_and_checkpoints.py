@@ -65,9 +65,35 @@ def upgrade() -> None:
         sa.PrimaryKeyConstraint("id", name=op.f("pk_checkpoint")),
     )
     op.create_index(op.f("ix_checkpoint_person_key"), "checkpoint", ["person_key"], unique=False)
+    op.create_table(
+        "conclusion_signature",
+        sa.Column("id", sa.Integer(), autoincrement=False, nullable=False),
+        sa.Column("entry", sa.Integer(), nullable=False),
+        sa.Column("conclusion", sa.Integer(), nullable=False),
+        sa.Column("person_key", sa.Integer(), nullable=False),
+        sa.Column("meaning", sa.Text(), nullable=False),
+        sa.Column("signer", sa.Text(), nullable=False),
+        sa.Column("time", sa.Text(), nullable=False),
+        sa.Column("signature", sa.LargeBinary(), nullable=False),
+        sa.Column("digest", sa.LargeBinary(), nullable=False),
+        sa.CheckConstraint(
+            "meaning IN ('prepared', 'reviewed', 'approved')", name=op.f("ck_conclusion_signature_meaning")
+        ),
+        sa.ForeignKeyConstraint(["conclusion"], ["conclusion.id"], name=op.f("fk_conclusion_signature_conclusion")),
+        sa.ForeignKeyConstraint(
+            ["entry"],
+            ["entry.number"],
+            name=op.f("fk_conclusion_signature_entry"),
+            initially="IMMEDIATE",
+            deferrable=True,
+        ),
+        sa.ForeignKeyConstraint(["person_key"], ["person_key.id"], name=op.f("fk_conclusion_signature_person_key")),
+        sa.PrimaryKeyConstraint("id", name=op.f("pk_conclusion_signature")),
+    )
+    op.create_index(op.f("ix_conclusion_signature_conclusion"), "conclusion_signature", ["conclusion"], unique=False)
     bind = op.get_bind()
     inspector = sa.inspect(bind)
-    for table in ("person_key", "person_key_revocation", "checkpoint"):
+    for table in ("person_key", "person_key_revocation", "checkpoint", "conclusion_signature"):
         others = sorted(unique["column_names"] for unique in inspector.get_unique_constraints(table))
         keys = [inspector.get_pk_constraint(table)["constrained_columns"], *others]
         for statement in guard(bind.dialect.name, table, keys):

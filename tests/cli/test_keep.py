@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import sqlite3
 
 import pytest
 
@@ -89,3 +90,47 @@ def test_a_run_s_particulars_are_restated_and_its_values_stay(call):
     assert [g["runs"] for g in after["groups"]] != [g["runs"] for g in before["groups"]]
     assert "nothing to state anew" in call("restate", "run", "1", "--reason", "no", code=2).err
     call("verify")
+
+
+def test_a_conclusion_is_signed_by_two_and_a_later_version_is_not(call, tmp_path):
+    for person in ("ana", "ben"):
+        call("key", "make", tmp_path / f"{person}.pem", "--by", person)
+    sign = ("sign", "batches", "--key")
+    early = call(*sign, tmp_path / "ben.pem", "--as", "approved", code=2)
+    assert "nobody has signed" in early.err
+    call(*sign, tmp_path / "ana.pem", "--as", "prepared", "--by", "ana")
+    own = call(*sign, tmp_path / "ana.pem", "--as", "approved", "--by", "ana", code=2)
+    assert "another person" in own.err
+    call(*sign, tmp_path / "ben.pem", "--as", "approved")
+    assert "another person" in call(*sign, tmp_path / "ben.pem", "--as", "reviewed", code=2).err
+    assert "somebody else" not in call(*sign, tmp_path / "ana.pem", "--as", "reviewed", code=2).out
+    signed = json.loads(call("differ", "batches", "--json").out)
+    assert [(s["version"], s["meaning"], s["person"]) for s in signed["signatures"]] == [
+        (signed["version"], "prepared", "ana"),
+        (signed["version"], "approved", "ben"),
+    ]
+    assert "Signed as approved by Ben Okoro" in call("differ", "batches").out
+    call("amend", "70.5", "--run", "1", "--replicate", "1", "--reason", "misread")
+    assert "NOT SIGNED" in call("differ", "batches").out
+    call("verify")
+
+
+@pytest.mark.parametrize(
+    "change",
+    [
+        "UPDATE conclusion_signature SET meaning = 'reviewed'",
+        "UPDATE conclusion_signature SET signer = 'Ana Lindqvist '",
+        "UPDATE conclusion_signature SET signature = zeroblob(64)",
+        "UPDATE conclusion_signature SET conclusion = conclusion - 1",
+        "UPDATE conclusion_signature SET time = '2020-01-01T00:00:00+00:00'",
+    ],
+)
+def test_a_signature_that_was_changed_is_found(call, tmp_path, sqlite_store, change):
+    call("key", "make", tmp_path / "ben.pem")
+    call("sign", "batches", "--as", "prepared", "--key", tmp_path / "ben.pem")
+    with sqlite3.connect(sqlite_store) as raw:
+        raw.execute("DROP TRIGGER conclusion_signature_no_update")
+        raw.execute(change)
+    raw.close()
+    found = json.loads(call("verify", "--json", code=1).out)["findings"]
+    assert any(f["check"] == 11 and f["table"] == "conclusion_signature" for f in found)

@@ -5,8 +5,8 @@ from __future__ import annotations
 import numpy as np
 import pytest
 import scipy.stats
-from laboratory import bare, run, statement
 
+from laboratory import bare, run, statement
 from sameline.records.drafts import DraftMeasurement
 
 MEANS = np.random.default_rng(20).normal(70.0, 0.5, (6, 3)).round(2)

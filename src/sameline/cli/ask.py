@@ -166,12 +166,16 @@ def _one(
     subject, behind = lab.subject(conclusion), lab.is_behind(conclusion) and version is None and as_of is None
     unit = None if contrast in (None, "look") else _contrast_unit(contrast or "")
     naive = None if unit is None else lab.contrast(conclusion, unit)
+    signed = lab.signatures(conclusion)
+    from sameline.reports.keys import signatures_document, signatures_text
+
     if as_json:
         from dataclasses import asdict
 
         from sameline.reports.documents import conclusion_document
 
         document = conclusion_document(conclusion, subject, behind=behind)
+        document["signatures"] = signatures_document(signed)
         if naive is not None:
             document["contrast"] = {"units": contrast, "pairs": [asdict(pair) for pair in naive.pairs]}
         write_json(document)
@@ -183,6 +187,7 @@ def _one(
         write(single_look_text(conclusion, subject))
     if naive is not None and unit is not None:
         write(contrast_text(conclusion, naive, subject, unit))
+    write(signatures_text(signed, conclusion))
 
 
 def _contrast_unit(word: str) -> str:

@@ -39,6 +39,7 @@ Passphrase = Annotated[
 def add_to(app: typer.Typer) -> None:
     """Add this file's commands."""
     app.add_typer(key_app, name="key")
+    app.command()(sign)
     app.command()(checkpoint)
     app.command()(backup)
     app.command()(copy)
@@ -87,6 +88,22 @@ def revoke_key(
     with open_store(store, by) as lab:
         outcome = lab.revoke_key(name, reason=reason)
     say(f"key {name} revoked, entry {outcome.entry}")
+
+
+def sign(
+    name: Annotated[str, typer.Argument(help="The comparison whose latest conclusion you sign.")],
+    meaning: Annotated[str, typer.Option("--as", help="What your signature means: prepared, reviewed or approved.")],
+    key: KeyFile,
+    passphrase: Passphrase = None,
+    store: StoreOption = DEFAULT_STORE,
+    by: ByOption = None,
+) -> None:
+    """Sign a conclusion. The approver is another person than the one who prepared it; a later version is not signed."""
+    from sameline.ledger.signatures import read_key_file
+
+    with open_store(store, by) as lab:
+        signed = lab.sign(name, meaning, read_key_file(key, passphrase or _ask("passphrase")))
+    say(f"{signed.name} v{signed.version} signed as {meaning} by {by}")
 
 
 def checkpoint(

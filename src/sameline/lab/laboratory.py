@@ -15,7 +15,17 @@ from sameline.errors import CallError, FindingsError
 from sameline.lab.corrections import touched_by_amending_runs, touched_by_reversal
 from sameline.lab.outcomes import Outcome, Taken, by_source, refuse
 from sameline.lab.reads import Reads
-from sameline.records import amendments, comparisons, registry, reversal, run_particulars, runs, scope, signing
+from sameline.records import (
+    amendments,
+    comparisons,
+    conclusion_signatures,
+    registry,
+    reversal,
+    run_particulars,
+    runs,
+    scope,
+    signing,
+)
 from sameline.records import tables as t
 from sameline.records.moments import read_zone, utc_text
 from sameline.records.store import Reading, Store
@@ -25,6 +35,7 @@ if TYPE_CHECKING:
     from sameline.ledger.checkpoint import Checkpoint
     from sameline.ledger.signatures import SigningKey
     from sameline.records.acts import Act
+    from sameline.records.answers import Conclusion
     from sameline.records.comparisons import Statement
     from sameline.records.drafts import DraftMeasurement, DraftRun, SourceFile
     from sameline.records.runs import Measurement
@@ -197,6 +208,19 @@ class Lab(Reads):
         """Sign the ledger's size and root as they are now; who keeps it can later see that nothing was rewritten."""
         with self._act("checkpoint", None) as act:
             return signing.make_checkpoint(act, signing_key)
+
+    def sign(self, name: str, meaning: str, signing_key: SigningKey) -> Conclusion:
+        """Sign the latest version of a conclusion as prepared, reviewed or approved.
+
+        Raises:
+            CallError: the comparison is behind, or the person may not sign it so.
+        """
+        conclusion = self.conclusion(name)
+        if self.is_behind(conclusion):
+            raise CallError(f"{name} is behind", advice="`sameline catch-up` brings it up to date")
+        with self._act("sign", None) as act:
+            conclusion_signatures.sign(act, conclusion, meaning, signing_key)
+        return conclusion
 
     def catch_up(self) -> Outcome:
         """Answer every comparison that is behind."""

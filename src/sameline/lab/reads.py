@@ -22,6 +22,7 @@ if TYPE_CHECKING:
     from sameline.conclusions.recompute import Verification
     from sameline.ledger.checkpoint import Checkpoint
     from sameline.records.answers import Answer, Conclusion
+    from sameline.records.conclusion_signatures import Signature
     from sameline.records.drafts import DraftMeasurement, Register
     from sameline.records.findings import LedgerReport
     from sameline.records.runs import Measurement
@@ -163,6 +164,14 @@ class Reads:
         from sameline.conclusions.recompute import verify
 
         return verify(self._store, progress, checkpoints)
+
+    def signatures(self, conclusion: Conclusion) -> list[tuple[int, Signature]]:
+        """The signatures on this version of a conclusion and on those before it, each with its version."""
+        from sameline.records.conclusion_signatures import read_signatures
+
+        with self.reading() as reading:
+            versions = concluded.versions_of(reading, conclusion.comparison, conclusion.version)
+            return [(versions[s.conclusion], s) for s in read_signatures(reading) if s.conclusion in versions]
 
     def keys(self, as_of: int | str | None = None) -> list[PersonKey]:
         """The public keys that persons sign with, oldest first."""

@@ -13,7 +13,7 @@ The checks, by number:
 Recomputing the conclusions is the eighth check (`sameline.conclusions.recompute`); that no comparison was left behind
 unseen, the ninth. The tenth is that the ledger still begins with the entries of each checkpoint that is recorded or
 given, and that each is signed with its signer's registered key: only against one that was kept elsewhere can it be seen
-that entries were cut off at the end, or all made anew.
+that entries were cut off at the end, or all made anew. The eleventh is that each signature on a conclusion holds.
 """
 
 from __future__ import annotations
@@ -30,6 +30,7 @@ from sameline.records.check_checkpoints import check_checkpoints, recorded_check
 from sameline.records.check_entries import check_entries
 from sameline.records.check_rows import CHUNK, TableCheck, check_references
 from sameline.records.check_schema import check_schema
+from sameline.records.conclusion_signatures import check_signatures
 from sameline.records.findings import Finding, Findings, LedgerReport, Progress
 
 __all__ = ["Finding", "LedgerReport", "check_ledger"]
@@ -64,6 +65,8 @@ def check_ledger(
                 findings.add(4, f"the entry wrote to {name}, which is no table of a store", None, None, span.entry)
         check_references(connection, findings)
         check_checkpoints(connection, findings, said, checkpoints, recorded)
+        with _unreadable(findings, "conclusion_signature"):
+            check_signatures(connection, findings)
     in_order = tuple(sorted(findings.all, key=lambda f: f.check))
     return LedgerReport(said.last, count.done, said.root.hex(), in_order)
 

@@ -162,6 +162,15 @@ def versions(reading: Reading, comparison: int) -> list[Conclusion]:
     return _read(reading, query)
 
 
+def versions_of(reading: Reading, comparison: int, last: int) -> dict[int, int]:
+    """Conclusion id -> version, of a comparison's versions up to this one."""
+    table = t.conclusion
+    query = select(table.c.id, table.c.version).where(
+        table.c.comparison == comparison, table.c.version <= last, table.c.entry <= reading.position
+    )
+    return dict(reading.connection.execute(query).all())
+
+
 def before_look(reading: Reading, comparison: int, look: int) -> Conclusion | None:
     """The last conclusion of a comparison made at an earlier look than this one; None where there is none."""
     query = _heads(reading).where(t.conclusion.c.comparison == comparison, t.conclusion.c.look < look)

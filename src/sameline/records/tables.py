@@ -383,6 +383,18 @@ checkpoint = recorded(
     Column("signature", LargeBinary, nullable=False),
 )
 
+# A person's signature with a meaning on one version of a conclusion: a later version does not carry it along.
+conclusion_signature = recorded(
+    "conclusion_signature",
+    Column("conclusion", Integer, to("conclusion.id"), nullable=False, index=True),
+    Column("person_key", Integer, to("person_key.id"), nullable=False),
+    Column("meaning", Text, nullable=False),
+    Column("signer", Text, nullable=False),
+    Column("time", Text, nullable=False),
+    Column("signature", LargeBinary, nullable=False),
+    CheckConstraint("meaning IN ('prepared', 'reviewed', 'approved')", name="meaning"),
+)
+
 
 def recorded_tables() -> tuple[Table, ...]:
     """All tables of recorded rows (each with an id, an entry and a digest), in the order in which they depend."""

@@ -3,11 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import asdict
 from typing import Any
 
 from sameline.ledger.signatures import public_text
+from sameline.records.answers import Conclusion
+from sameline.records.conclusion_signatures import Signature
 from sameline.records.signing import PersonKey
-from sameline.reports.text import table
+from sameline.reports.text import moment, table
 
 
 def keys_text(keys: Sequence[PersonKey]) -> list[str]:
@@ -35,3 +38,22 @@ def keys_document(keys: Sequence[PersonKey]) -> list[dict[str, Any]]:
         }
         for k in keys
     ]
+
+
+def signatures_text(signed: Sequence[tuple[int, Signature]], conclusion: Conclusion) -> list[str]:
+    """Who signed this version as what; where an earlier version was signed and this one is not, that is said."""
+    own = [s for version, s in signed if version == conclusion.version]
+    if own:
+        return ["", *(f"  Signed as {s.meaning} by {s.signer}, {moment(s.time)}, key {s.key}." for s in own)]
+    if not signed:
+        return []
+    version, last = signed[-1]
+    return [
+        "",
+        f"  NOT SIGNED. Version {version} was signed as {last.meaning} by {last.signer}; what came after it is not.",
+    ]
+
+
+def signatures_document(signed: Sequence[tuple[int, Signature]]) -> list[dict[str, Any]]:
+    """The same for other programs."""
+    return [{"version": version, **asdict(s)} for version, s in signed]
