@@ -48,7 +48,28 @@ def choose_layout(ways: Sequence[Table], maps: Sequence[HeadingMap], book: Findi
         fitting = _fitting(rows, maps)
         if len(fitting) == 1:
             form, number, headings = fitting[0]
-            _ask_columns(book, number, strange(headings), "is none of ours", nearest)
+            _ask_columns(book, number, form.unknown(headings), f"is not in the map {form.name!r}")
+            return table, layout_of(form, number, headings, dict(rows).get(number + 1, ()))
+        if fitting:
+            names = ", ".join(repr(form.name) for form, _, _ in fitting)
+            book.add(fitting[0][1], None, None, f"several maps fit these headings: {names}", "say which one is meant")
+            return None
+    return None
+
+
+def _own(rows: list[Row], book: FindingBook) -> Layout | None:
+    """The layout of a table with our own headings."""
+    for number, row in rows:
+        headings = trimmed(row)
+        form = own_map(headings)
+        if form.missing():
+            continue
+        folded = [fold(column.heading) for column in form.columns]
+        twice = next((heading for heading in folded if folded.count(heading) > 1), None)
+        if twice is not None:
+            book.add(number, twice, twice, f"the heading {twice!r} is there more than once", "keep one of them")
+            return None
+        _ask_columns(book, number, strange(headings), "is none of ours", Nearest(FIELDS[:-1]))
         return layout_of(form, number, headings)
     return None
 
