@@ -81,7 +81,8 @@ def _degrees_of_freedom(estimate: Estimate) -> Iterator[Caution]:
     if float(kept.min()) < FEW_DF:
         yield Caution(
             "few-degrees-of-freedom",
-            f"the spread rests on {kept.min():.2g} degrees of freedom: intervals are wide and depend on few units",
+            f"the spread rests on {kept.min():.2g} degree{'' if kept.min() == 1.0 else 's'} of freedom: "
+            "intervals are wide and depend on few units",
         )
 
 
