@@ -14,7 +14,8 @@ from sameline.conclusions.recompute import verify
 from sameline.ledger.checkpoint import Checkpoint, sign_checkpoint
 from sameline.records import tables as t
 from sameline.records.checks import Finding, check_ledger
-from sameline.records.store import Store
+from sameline.records.signing import read_checkpoints
+from sameline.records.store import Reading, Store
 
 
 def checkpoint_of(connection: Connection) -> Checkpoint:
@@ -125,3 +126,27 @@ def test_the_history_of_a_conclusion_replaced_and_everything_made_anew(sqlite_st
 def test_a_count_of_looks_replaced_and_everything_made_anew(sqlite_store: str):
     findings = _made_anew(sqlite_store, t.conclusion, 11, look=1)
     assert any(f.row == 11 and "look: recorded 1" in f.problem for f in findings)
+
+
+def test_since_a_checkpoint_only_what_came_after_is_looked_at(sqlite_module_store: str):
+    with a.unguarded(sqlite_module_store) as connection:
+        since = checkpoint_of(connection)
+        whole = check_ledger(connection)
+        row = {"id": a.last(connection, t.measurement) + 1, "entry": since.entries, "run": 1, "replicate": 9}
+        row |= {"text": "70", "value": 70.0, "qualifier": None, "unit": None, "digest": bytes(32)}
+        a.add(connection, t.measurement, row)
+        report = check_ledger(connection, since=since)
+        assert report.rows == 0
+        assert report.root == whole.root
+        assert named(list(report.findings), "measurement", row["id"], 4)
+        assert len(report.findings) == 1
+        early = a.read(connection, t.checkpoint, 1)["entries"]
+        kept = next(c for c in read_checkpoints(Reading(connection, since.entries)) if c.entries == early)
+        a.write(connection, t.measurement, 3, text="70.9")
+        a.write(connection, t.entry, early + 1, reason="made up")
+        after = list(check_ledger(connection, since=kept).findings)
+        assert not named(after, "measurement", 3)
+        assert named(after, "entry", early + 1, 2)
+        a.write(connection, t.entry, 5, reason="made up")
+        a.rehash_all(connection)
+        assert any(f.check == 10 and "given" in f.problem for f in check_ledger(connection, since=kept).findings)

@@ -57,21 +57,27 @@ class Verification:
     behind: tuple[str, ...]
 
 
-def verify(store: Store, progress: Progress | None = None, checkpoints: Sequence[Checkpoint] = ()) -> Verification:
+def verify(
+    store: Store,
+    progress: Progress | None = None,
+    checkpoints: Sequence[Checkpoint] = (),
+    since: Checkpoint | None = None,
+) -> Verification:
     """Check the ledger against the rows, then recompute every conclusion.
 
     Args:
         store: an open store.
         progress: told now and then what is checked, how far it is, and how far it goes.
         checkpoints: statements of the ledger as it was, kept elsewhere.
+        since: one of them; the rows and conclusions of the entries that it covers are taken as checked before.
     """
     tell = progress or (lambda _what, _done, _all: None)
     with store.reading() as reading:
-        ledger = check_ledger(reading.connection, lambda done, total: tell("rows", done, total), checkpoints)
+        ledger = check_ledger(reading.connection, lambda done, total: tell("rows", done, total), checkpoints, since)
     done: list[int] = []
     late: list[str] = []
     with store.reading() as reading:
-        recomputed = _as_far_as_possible(8, _conclusions(reading, tell, done))
+        recomputed = _as_far_as_possible(8, _conclusions(reading, tell, done, since.entries if since else 0))
         unseen = _as_far_as_possible(9, _left_behind(reading, late))
     found = sorted((*ledger.findings, *recomputed, *unseen), key=lambda f: f.check)
     return Verification(ledger, len(done), tuple(found), tuple(late))
@@ -87,9 +93,9 @@ def _as_far_as_possible(check: int, findings: Iterator[Finding]) -> list[Finding
     return found
 
 
-def _conclusions(reading: Reading, tell: Progress, done: list[int]) -> Iterator[Finding]:
+def _conclusions(reading: Reading, tell: Progress, done: list[int], after: int) -> Iterator[Finding]:
     """8. Every conclusion with its place in its history, in the order of recording; `done` gets a number for each."""
-    recorded = concluded.all_versions(reading)
+    recorded = concluded.all_versions(reading, after)
     for number, (comparison, version) in enumerate(recorded, 1):
         yield from _conclusion(reading, comparison, version)
         done.append(number)

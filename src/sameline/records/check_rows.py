@@ -35,13 +35,23 @@ class Span:
 
 
 class TableCheck:
-    """4, 5 and 6. The rows of one table against the entries that wrote them, in order of their ids."""
+    """4, 5 and 6. The rows of one table against the entries that wrote them, in order of their ids.
 
-    def __init__(self, connection: Connection, findings: Findings, table: Table, counted: Callable[[], None]) -> None:
+    Args:
+        connection: sees the store.
+        findings: takes what is found.
+        table: the table.
+        counted: told of each row.
+        start: the id of the first row to look at.
+    """
+
+    def __init__(
+        self, connection: Connection, findings: Findings, table: Table, counted: Callable[[], None], start: int = 0
+    ) -> None:
         self._findings = findings
         self._table = table
         self._digest = Digester(table)
-        self._rows = every_row(connection, table, "id")
+        self._rows = every_row(connection, table, "id", start)
         self._row: Any = None
         self._counted = counted
 
@@ -115,10 +125,11 @@ def check_references(connection: Connection, findings: Findings) -> None:
         findings.add(7, f"the references cannot be checked: {error.orig}")
 
 
-def every_row(connection: Connection, table: Table, key: str) -> Iterator[Any]:
-    """Every row of a table in order of its key, as plain tuples with the digest last; undecodable text is kept odd."""
+def every_row(connection: Connection, table: Table, key: str, start: int = 0) -> Iterator[Any]:
+    """The rows of a table from one key on, in its order, as plain tuples with the digest last; odd text is kept odd."""
     names = ", ".join(f'"{name}"' for name in (*t.hashed_columns(table), "digest"))
-    statement = f'SELECT {names} FROM "{table.name}" ORDER BY "{key}"'  # noqa: S608 - the schema's own names
+    beyond = f' WHERE "{key}" >= {int(start)}' if start else ""
+    statement = f'SELECT {names} FROM "{table.name}"{beyond} ORDER BY "{key}"'  # noqa: S608 - the schema's own names
     streaming = connection.execution_options(stream_results=True, yield_per=CHUNK)
     for chunk in streaming.exec_driver_sql(statement).partitions():
         yield from chunk

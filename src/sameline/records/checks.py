@@ -40,6 +40,7 @@ def check_ledger(
     connection: Connection,
     progress: Progress = lambda _done, _all: None,
     checkpoints: Sequence[Checkpoint] = (),
+    since: Checkpoint | None = None,
 ) -> LedgerReport:
     """Check the whole ledger against the rows.
 
@@ -47,7 +48,11 @@ def check_ledger(
         connection: a connection that sees the store.
         progress: told now and then how far it is.
         checkpoints: statements of the ledger as it was, kept elsewhere.
+        since: one of them; the rows of the entries that it covers are taken as checked before. The entries are checked
+            all the same, for they are what it states.
     """
+    given = checkpoints if since is None or since in checkpoints else (*checkpoints, since)
+    covered = since.entries if since else 0
     findings = Findings()
     with _odd_text(connection):
         present = set(inspect(connection).get_table_names())
@@ -55,16 +60,21 @@ def check_ledger(
         if not present >= _NEEDED:
             return LedgerReport(0, 0, "", tuple(findings.all))  # without these there is nothing to check against
         recorded = recorded_checkpoints(connection, findings)
-        said = check_entries(connection, findings, frozenset(c.entries for c in (*checkpoints, *recorded)))
-        count = _Count(sum(span.count for spans in said.spans.values() for span in spans), progress)
+        said = check_entries(connection, findings, frozenset(c.entries for c in (*given, *recorded)))
+        count = _Count(
+            sum(span.count for spans in said.spans.values() for span in spans if span.entry > covered), progress
+        )
         for table in t.recorded_tables():
             with _unreadable(findings, table.name):
-                TableCheck(connection, findings, table, count.one).run(said.spans.pop(table.name, []))
+                spans = said.spans.pop(table.name, [])
+                start = max((span.end for span in spans if span.entry <= covered), default=0)
+                check = TableCheck(connection, findings, table, count.one, start)
+                check.run([span for span in spans if span.entry > covered])
         for name, left in said.spans.items():
             for span in left:
                 findings.add(4, f"the entry wrote to {name}, which is no table of a store", None, None, span.entry)
         check_references(connection, findings)
-        check_checkpoints(connection, findings, said, checkpoints, recorded)
+        check_checkpoints(connection, findings, said, given, recorded)
         with _unreadable(findings, "conclusion_signature"):
             check_signatures(connection, findings)
     in_order = tuple(sorted(findings.all, key=lambda f: f.check))

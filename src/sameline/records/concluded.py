@@ -177,11 +177,11 @@ def before_look(reading: Reading, comparison: int, look: int) -> Conclusion | No
     return _one(reading, query.order_by(t.conclusion.c.version.desc()).limit(1))
 
 
-def all_versions(reading: Reading) -> list[tuple[int, int]]:
-    """Comparison and version of every conclusion, in the order in which they were recorded."""
+def all_versions(reading: Reading, after: int = 0) -> list[tuple[int, int]]:
+    """Comparison and version of every conclusion recorded after an entry, in the order in which they were recorded."""
     query = (
         select(t.conclusion.c.comparison, t.conclusion.c.version)
-        .where(t.conclusion.c.entry <= reading.position)
+        .where(t.conclusion.c.entry <= reading.position, t.conclusion.c.entry > after)
         .order_by(t.conclusion.c.id)
     )
     return [(comparison, version) for comparison, version in reading.connection.execute(query)]
