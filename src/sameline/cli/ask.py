@@ -228,7 +228,10 @@ def diagnose(
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
 ) -> None:
-    """Look again at the data behind a conclusion: spreads, shape, equivalence, and values that stand out."""
+    """Look again at the data behind a conclusion.
+
+    Tests of all groups, of equal spread, of shape and of equivalence, and what the outlier tests flag.
+    """
     with open_store(store) as lab:
         conclusion = lab.conclusion(name, version, as_of)
         found, subject = lab.diagnose(conclusion), lab.subject(conclusion)

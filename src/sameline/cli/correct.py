@@ -100,7 +100,10 @@ def reverse(
     store: StoreOption = DEFAULT_STORE,
     by: ByOption = None,
 ) -> None:
-    """Reverse a whole entry, such as a file taken in by mistake: its runs are set aside, its corrections undone."""
+    """Reverse a whole entry, such as a file taken in by mistake.
+
+    Runs that it recorded are set aside, corrections that it made are undone; what it wrote stays readable.
+    """
     with open_store(store, by) as lab:
         outcome = lab.reverse(entry, reason=reason)
     say(f"entry {entry} reversed, entry {outcome.entry}")

@@ -98,7 +98,10 @@ def sign(
     store: StoreOption = DEFAULT_STORE,
     by: ByOption = None,
 ) -> None:
-    """Sign a conclusion. The approver is another person than the one who prepared it; a later version is not signed."""
+    """Sign a conclusion.
+
+    The approver is another person than the one who prepared it. A later version is not signed by it.
+    """
     from sameline.ledger.signatures import read_key_file
 
     with open_store(store, by) as lab:
@@ -113,7 +116,10 @@ def checkpoint(
     store: StoreOption = DEFAULT_STORE,
     by: ByOption = None,
 ) -> None:
-    """Sign the ledger's size and root into a small text file: mail it, print it, post it. It proves what was there."""
+    """Sign the ledger's size and root into a small text file.
+
+    Mail it, print it, post it: it proves what was there.
+    """
     from sameline.ledger.signatures import read_key_file
 
     if out.exists():
@@ -128,7 +134,10 @@ def backup(
     path: Annotated[Path, typer.Argument(help="The file to make.")],
     store: StoreOption = DEFAULT_STORE,
 ) -> None:
-    """Copy the store to a new file while others use it, and check the copy row by row."""
+    """Copy the store to a new file, and check the copy.
+
+    Others may use the store meanwhile.
+    """
     with open_store(store) as lab:
         _say_copied(str(path), lab.backup(path))
 
@@ -137,7 +146,10 @@ def copy(
     place: Annotated[str, typer.Argument(help="A new file, or the URL of an empty database.")],
     store: StoreOption = DEFAULT_STORE,
 ) -> None:
-    """Copy the whole store to another database, SQLite or PostgreSQL; ledger and root stay what they are."""
+    """Copy the store to another database.
+
+    SQLite or PostgreSQL; ledger and root stay what they are.
+    """
     with open_store(store) as lab:
         report = lab.copy(place)
     _say_copied("the copy", report)  # a URL may hold a password

@@ -31,7 +31,10 @@ def spread(
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
 ) -> None:
-    """How a characteristic scatters: from batch to batch, run to run, replicate to replicate."""
+    """Say how a characteristic scatters.
+
+    From batch to batch, from run to run, from replicate to replicate.
+    """
     from sameline.reports.sizes import spread_document, spread_text
 
     with open_store(store) as lab:
@@ -76,7 +79,10 @@ def size(
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
 ) -> None:
-    """How many batches, runs and replicates to plan, and what would settle an undecided pair."""
+    """Say how much to test.
+
+    How many batches, runs and replicates to plan, and what would settle an undecided pair.
+    """
     from sameline.conclusions.planning import Wanted, sizes
     from sameline.stats.plans import Costs
 

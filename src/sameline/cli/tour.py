@@ -45,7 +45,7 @@ def tour(
     player = _Player(folder)
     say(scenario["notice"])
     for number, step in enumerate(scenario["steps"], 1):
-        _announce(number, len(scenario["steps"]), step)
+        _announce(number, len(scenario["steps"]), player.named(step))
         player.play(step)
         if pause:
             typer.prompt("", prompt_suffix="Enter for the next step", default="", show_default=False, err=True)
@@ -86,6 +86,13 @@ class _Player:
 
         self.moment = read_moment(step["at"], "UTC")
         getattr(self, f"_{step['act']}")(step)
+
+    def named(self, step: Step) -> Step:
+        """The step, with the number of the run that an amendment names otherwise."""
+        if step["act"] != "amend":
+            return step
+        run = self._of(step).find_run(step["batch"], step["characteristic"], step["tested_at"])
+        return {**step, "run": run}
 
     def close(self) -> None:
         if self.lab is not None:
@@ -247,7 +254,9 @@ _COMMANDS: dict[str, Callable[[Step], list[str]]] = {
     "take": lambda step: [_line("take", step["file"])],
     "differ": lambda step: [_line("differ", step["name"], contrast=step.get("contrast"))],
     "history": lambda step: [_line("history", step["name"])],
-    "amend": lambda step: [_line("amend", step["value"], run="N", replicate=step["replicate"], reason=step["reason"])],
+    "amend": lambda step: [
+        _line("amend", step["value"], run=step["run"], replicate=step["replicate"], reason=step["reason"])
+    ],
     "trail": lambda step: [_line("trail", batch=step["batch"])],
     "verify": lambda _step: [_line("verify")],
 }

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
@@ -37,8 +38,12 @@ def _judge(revision: Revision, inputs: Inputs, past: Past) -> Answer:
     try:
         judged = judge(revision, inputs, past)
     except StatsError as error:
-        return replace(nothing, reason=str(error))
+        return replace(nothing, reason=_said(error))
     return _answered(nothing, replace(judged, cautions=(*judged.cautions, *standing_out(inputs.kept))))
+
+
+def _said(error: StatsError) -> str:
+    return f"{error.message} ({error.advice})" if error.advice else error.message
 
 
 def _answered(nothing: Answer, judged: Judged) -> Answer:
@@ -97,9 +102,15 @@ def _nothing(inputs: Inputs) -> Answer:
 
 
 def _counted(number: int, label: str, kept: tuple[Value, ...]) -> GroupAnswer:
-    own = [v for v in kept if v.group == label]
-    runs = len({v.run for v in own})
-    return GroupAnswer(number, label, 0, runs, len(own), None, None, None, None, "")
+    by_run: dict[int, list[Value]] = {}
+    for v in kept:
+        if v.group == label:
+            by_run.setdefault(v.run, []).append(v)
+    own = [v for values in by_run.values() for v in values]
+    mean = None
+    if own and not any(v.censored for v in own):
+        mean = math.fsum(math.fsum(v.value for v in values) / len(values) for values in by_run.values()) / len(by_run)
+    return GroupAnswer(number, label, 0, len(by_run), len(own), mean, None, None, None, "")
 
 
 def _refusal(revision: Revision, inputs: Inputs) -> str | None:
@@ -143,7 +154,8 @@ def _set_aside(revision: Revision, inputs: Inputs, past: Past, found: Answer) ->
         if (p.a, p.b) in then and then[p.a, p.b] != p.verdict
     ]
     runs = len({v.run for v in aside})
-    what = f"{len(aside)} {_plural('value', len(aside))} of {runs} {_plural('run', runs)} are set aside"
+    be = "is" if len(aside) == 1 else "are"
+    what = f"{len(aside)} {_plural('value', len(aside))} of {runs} {_plural('run', runs)} {be} set aside"
     if other.state != ANSWERED:
         effect = f"put back, it could not be computed{'' if found.state == ANSWERED else ' either'}"
     elif found.state != ANSWERED:

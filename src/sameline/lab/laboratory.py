@@ -96,12 +96,7 @@ class Lab(Reads):
             raise CallError("there is no run to record")
         with self._act("log" if source is None else "take", None) as act:
             if source is not None and (known := runs.known_source(act.connection, source.sha256)):
-                raise FindingsError(
-                    f"this file was taken in already, as {known[1]}",
-                    [],
-                    where=source.name,
-                    advice=f"entry {known[0]} holds its runs; nothing was recorded",
-                )
+                raise _taken_already(source, known)
             ids = runs.record_runs(act, drafts, source)
             new = [(row["characteristic"], row["batch"], row["tested_at"]) for row in act.pending(t.run)]
             scope.touch(act, scope.touched_by_runs(act, new))
@@ -127,9 +122,12 @@ class Lab(Reads):
             FindingsError: the files have findings; nothing was recorded.
         """
         from sameline.intake.files import read_files
+        from sameline.intake.rawfiles import RawFile, load
 
+        opened = [path if isinstance(path, RawFile) else load(path) for path in paths]
+        self._refuse_known([raw.source() for raw in opened])
         with self.register() as register:
-            found = read_files(paths, register, progress=progress)
+            found = read_files(opened, register, progress=progress)
             facts = {code: register.characteristics[code] for code in {run.characteristic for run in found.runs}}
         if not check_only:
             refuse(found, as_they_stand=as_they_stand)
@@ -235,6 +233,13 @@ class Lab(Reads):
         with self._store.act(what, by=self._by, at=self._clock(), reason=reason) as act:
             yield act
 
+    def _refuse_known(self, sources: Sequence[SourceFile]) -> None:
+        """Refuse a file whose content was taken in already, before it is read line by line."""
+        with self._store.reading() as reading:
+            for source in sources:
+                if known := runs.known_source(reading.connection, source.sha256):
+                    raise _taken_already(source, known)
+
     def _after(self, entry: int) -> Outcome:
         """Answer what is behind, each in its own transaction; what cannot be answered stays behind and is named."""
         done, left = [], []
@@ -264,6 +269,15 @@ class Lab(Reads):
     def _touch_measurements(self, act: Act, found: Sequence[Measurement]) -> None:
         touched = scope.touched_by_runs(act, {(m.characteristic, m.batch, m.tested_at) for m in found})
         scope.touch(act, touched)
+
+
+def _taken_already(source: SourceFile, known: tuple[int, str]) -> FindingsError:
+    return FindingsError(
+        f"this file was taken in already, as {known[1]}",
+        [],
+        where=source.name,
+        advice=f"entry {known[0]} holds its runs; nothing was recorded",
+    )
 
 
 def open_lab(store: str | Path, *, by: str | None = None, clock: Callable[[], str] = _now) -> Lab:

@@ -196,6 +196,9 @@ def said_plainly(where: str) -> Iterator[None]:
     except DBAPIError as error:
         problem, advice = _in_plain_words(str(error.orig).strip() or type(error.orig).__name__)
         raise StoreError(problem, where=where, advice=advice) from error
+    except StoreError as error:
+        error.where = error.where or where
+        raise
 
 
 def _in_plain_words(text: str) -> tuple[str, str | None]:

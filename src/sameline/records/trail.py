@@ -12,6 +12,7 @@ from sameline.records import tables as t
 from sameline.records.registry import KINDS, find
 from sameline.records.scope import touched_entries
 from sameline.records.store import Reading
+from sameline.records.subjects import Manifest, subjects
 
 
 @dataclass(frozen=True, slots=True)
@@ -20,6 +21,7 @@ class TrailEntry:
 
     Attributes:
         number, at, person, act, reason, software: as recorded; the person by code.
+        about: what it is about, in words.
         rows: for each table, how many rows the act wrote.
         digest: the entry's hash, in hexadecimal.
     """
@@ -29,6 +31,7 @@ class TrailEntry:
     person: str
     act: str
     reason: str | None
+    about: tuple[str, ...]
     rows: dict[str, int]
     software: str
     digest: str
@@ -69,13 +72,19 @@ def read_trail(
     if comparison is not None:
         query = query.where(entry.c.number.in_(touched_entries(comparison)))
     found = reading.connection.execute(query.order_by(entry.c.number.desc()).limit(last)).mappings().all()
-    return [_entry(row) for row in reversed(found)]
+    manifests = {row["number"]: _manifest(row) for row in found}
+    about = subjects(reading, manifests)
+    return [_entry(row, manifests[row["number"]], about[row["number"]]) for row in reversed(found)]
 
 
-def _entry(row: Any) -> TrailEntry:  # noqa: ANN401 - a row of the query above
-    rows = {part["table"]: part["count"] for part in json.loads(row["rows"])}
+def _manifest(row: Any) -> dict[str, tuple[int, int]]:  # noqa: ANN401 - a row of the query above
+    return {part["table"]: (part["first"], part["count"]) for part in json.loads(row["rows"])}
+
+
+def _entry(row: Any, manifest: Manifest, about: list[str]) -> TrailEntry:  # noqa: ANN401 - a row of the query above
+    rows = {table: count for table, (_, count) in manifest.items()}
     own = {f: row[f] for f in ("number", "at", "act", "reason", "software")}
-    return TrailEntry(**own, person=row["code"], rows=rows, digest=row["digest"].hex())
+    return TrailEntry(**own, person=row["code"], about=tuple(about), rows=rows, digest=row["digest"].hex())
 
 
 def _about_batch(batch: int) -> Any:  # noqa: ANN401 - a SQL subquery of entry numbers

@@ -10,13 +10,6 @@ from sameline.records.trail import TrailEntry
 from sameline.reports.changes import look_words, tally, turn_words
 from sameline.reports.text import count, listed, moment, p_value, table
 
-_TABLE_WORDS = {
-    "measurement": ("value", "values"),
-    "batch": ("batch", "batches"),
-    "comparison_touch": ("comparison touched", "comparisons touched"),
-}
-_SILENT = ("particulars", "conclusion_", "comparison_revision", "comparison_group", "source_file")
-
 
 def history_text(versions: Sequence[Conclusion]) -> list[str]:
     """The versions of one comparison's conclusion, oldest first, with what turned at each and why."""
@@ -39,23 +32,25 @@ def _evidence(conclusion: Conclusion) -> list[str]:
         return []
     first = min(judged, key=lambda p: p.p_value or 0.0)
     least = min(alone, key=lambda p: p.single_look_p or 0.0)
-    strongest = f"    strongest evidence: {first.a} and {first.b}, overall p {p_value(first.p_value)}"
-    return [f"{strongest}; this look alone {p_value(least.single_look_p)} ({least.a} and {least.b})"]
+    said = f"this look alone {p_value(least.single_look_p)} ({least.a} and {least.b})"
+    if (first.p_value or 0.0) < 1:
+        said = f"strongest evidence: {first.a} and {first.b}, overall p {p_value(first.p_value)}; {said}"
+    return [f"    {said}"]
 
 
 def trail_text(entries: Sequence[TrailEntry]) -> list[str]:
-    """The audit trail as a table, with the reason of an act below it."""
-    rows = [(str(e.number), moment(e.at), e.person, e.act, _wrote(e) + _why(e)) for e in entries]
-    return table(("entry", "recorded", "person", "act", "what it wrote, and why"), rows, "><<<<", indent="")
+    """The audit trail as a table: who did what, when, to what, and why."""
+    rows = [(str(e.number), moment(e.at), e.person, e.act, _to_what(e) + _why(e)) for e in entries]
+    return table(("entry", "recorded", "person", "act", "to what, and why"), rows, "><<<<", indent="")
 
 
-def _wrote(entry: TrailEntry) -> str:
-    parts = [
-        count(many, *_TABLE_WORDS.get(name, (name.replace("_", " "), None)))
-        for name, many in entry.rows.items()
-        if not any(word in name for word in _SILENT)
-    ]
-    return ", ".join(parts) or "particulars"
+def _to_what(entry: TrailEntry) -> str:
+    said = ", ".join(entry.about) or "the store"
+    counts = [count(entry.rows[name], word) for name, word in _COUNTED.items() if name in entry.rows]
+    return f"{said} ({', '.join(counts)})" if counts else said
+
+
+_COUNTED = {"run": "run", "measurement": "value"}
 
 
 def _why(entry: TrailEntry) -> str:
