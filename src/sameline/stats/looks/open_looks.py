@@ -1,7 +1,9 @@
 """Looks without end: evidence that holds at every look, from the first run to the ten-thousandth.
 
 Exact for independent normal units with one spread (`judge_open`); with contrasts of any other fit the same formulas
-are approximate, as good as their standard errors and degrees of freedom (`judge_open_contrasts`).
+are approximate, as good as their standard errors and degrees of freedom (`judge_open_contrasts`). Unequal spread is not
+forgiven: with one of five groups spread three times as wide, `judge_open` claimed falsely in 13 % of 10 000 simulated
+histories of 30 looks, contrasts by Welch in 1 %, `judge_union` in 3 % (tests/benchmarks/looks_false_claims.py).
 """
 
 from __future__ import annotations
