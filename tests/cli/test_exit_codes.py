@@ -66,7 +66,7 @@ def test_a_reader_that_goes_away_is_no_error(bench):
     ended = subprocess.run(
         ["/bin/bash", "-c", first_line], cwd=bench.folder, capture_output=True, text=True, check=False
     )
-    assert ended.stdout.split() == ["entry", "recorded", "person", "act", "what", "it", "wrote,", "and", "why", "0"]
+    assert ended.stdout.split() == ["entry", "recorded", "person", "act", "to", "what,", "and", "why", "0"]
     assert ended.stderr == ""
 
 

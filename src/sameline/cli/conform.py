@@ -33,7 +33,10 @@ def conform(
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
 ) -> None:
-    """Whether a batch's mean keeps its limits, its uncertainty taken into account."""
+    """Say whether a batch keeps its specification limits.
+
+    By its mean, with the mean's uncertainty taken into account.
+    """
     from sameline.reports.conformity import read_conformity
     from sameline.reports.conformity_text import conformity_document, conformity_text
     from sameline.stats.conformity import RULES
@@ -55,7 +58,10 @@ def capability(
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
 ) -> None:
-    """How well a supplier's batches keep the limits: performance indices with intervals."""
+    """Say how well a supplier's batches keep the limits.
+
+    As performance indices with intervals.
+    """
     from sameline.reports.conformity import read_capability
     from sameline.reports.conformity_text import capability_document, capability_text
 
