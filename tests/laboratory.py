@@ -111,6 +111,7 @@ def small(store: str, clock: Clock | None = None) -> Lab:
     lab.register_key("ana", old.public)
     lab.register_key("ana", key.public)
     lab.checkpoint(old)
+    lab.sign("batches", "prepared", key)
     lab.revoke_key(key_id(old.public), reason="the laptop is lost")
     lab.checkpoint(key)
     return lab

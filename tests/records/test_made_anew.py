@@ -55,7 +55,8 @@ def test_a_ledger_made_anew_is_found_against_a_checkpoint(sqlite_module_store: s
         a.rehash_all(connection)
         (finding, *_) = found(connection)
         assert "recorded checkpoint" in finding.problem
-        a.forget(connection, t.checkpoint)
+        for signed in (t.checkpoint, t.conclusion_signature):
+            a.forget(connection, signed)
         a.rehash_all(connection)
         assert found(connection) == []
         (finding,) = found(connection, kept)
@@ -100,7 +101,8 @@ def _made_anew(store: str, table: Table, number: int, **fields: object) -> list[
             connection.connection.dbapi_connection.execute("PRAGMA foreign_keys = OFF")
             with connection.begin():
                 a.write(connection, table, number, **fields)
-                a.forget(connection, t.checkpoint)
+                for signed in (t.checkpoint, t.conclusion_signature):
+                    a.forget(connection, signed)
                 a.rehash_all(connection)
         return list(verify(opened).findings)
 
