@@ -149,9 +149,18 @@ def read_conformity(
     basis = f"run-to-run spread of {count(len(fit.groups), 'batch', 'batches')} of {material} together, nested model"
     cautions = [*(c.text for c in fit.cautions), *_aside([m for code, m in found if code == batch])]
     return BatchConformity(
-        batch, material, limits, measured, other, len({m.run for m in own}), len(own), basis, tuple(answers), probability,
-        (*cautions, *_critical(limits)),
-    )  # fmt: skip
+        batch=batch,
+        material=material,
+        limits=limits,
+        measured=measured,
+        other=other,
+        runs=len({m.run for m in own}),
+        values=len(own),
+        basis=basis,
+        answers=tuple(answers),
+        probability=probability,
+        cautions=(*cautions, *_critical(limits)),
+    )
 
 
 def read_capability(

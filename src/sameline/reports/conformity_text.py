@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import asdict
 from typing import TYPE_CHECKING, Any
@@ -62,7 +63,8 @@ def _answer_row(answer: Conformity, decimals: int) -> tuple[str, ...]:
 
 
 def _limit_words(limits: Limits) -> str:
-    named = f"{limits.name} ({limits.code}), {limits.unit}; limits"
+    name = limits.name if limits.name == limits.code else f"{limits.name} ({limits.code})"
+    named = f"{name}, {limits.unit}; limits"
     if limits.lower is None:
         return f"{named} at most {plain(limits.upper)}"
     if limits.upper is None:
@@ -71,7 +73,7 @@ def _limit_words(limits: Limits) -> str:
 
 
 def _df_words(df: float) -> str:
-    return f"{df:.1f} degrees of freedom"
+    return f"{df:.1f} degrees of freedom" if math.isfinite(df) else "known without doubt"
 
 
 def _share(p: float) -> str:
@@ -79,8 +81,11 @@ def _share(p: float) -> str:
 
 
 def conformity_document(found: BatchConformity) -> dict[str, Any]:
-    """The same for other programs."""
-    return asdict(found)
+    """The same for other programs; degrees of freedom without end are null."""
+    document = asdict(found)
+    if not math.isfinite(found.measured.df):
+        document["measured"]["df"] = None
+    return document
 
 
 def capability_document(found: SupplierCapability) -> dict[str, Any]:

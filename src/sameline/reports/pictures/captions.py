@@ -65,9 +65,13 @@ def question_words(subject: Subject) -> str:
     margin = "no margin stated" if subject.margin is None else f"margin {plain(subject.margin)} {subject.unit}"
     of = f" Groups: {subject.filter}." if subject.filter else ""
     side = "" if revision.alternative == "two-sided" else f", one-sided ({revision.alternative})"
-    return (
-        f"{subject.name} ({subject.characteristic}) in {subject.unit}{method}.{of} {how}{unit}{side}; {rate}; {margin}."
-    )
+    what = f"{named(subject.name, subject.characteristic)} in {subject.unit}{method}"
+    return f"{what}.{of} {how}{unit}{side}; {rate}; {margin}."
+
+
+def named(name: str, code: str) -> str:
+    """A name with its code, or the name alone where they are the same."""
+    return name if name == code else f"{name} ({code})"
 
 
 def data_words(conclusion: Conclusion) -> str:
@@ -85,7 +89,7 @@ def shown_caption(shown: Shown, marks: str, runs: Sequence[DrawnRun] | None = No
     method = f", {shown.method}" if shown.method else ""
     parts = [
         marks,
-        f"{shown.name} ({shown.characteristic}) in {shown.unit}{method}; {shown.filter}.",
+        f"{named(shown.name, shown.characteristic)} in {shown.unit}{method}; {shown.filter}.",
         f"n: {count(entering, 'run')}, {count(values, 'value')}.",
         "Procedure: none; nothing is tested here, so no error rate and no look applies." if runs is None else "",
         f"Records up to ledger entry {shown.position}.",

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 from sameline.reports.changes import look_words
 from sameline.reports.pictures.brackets import Bracket, brackets
-from sameline.reports.pictures.captions import conclusion_caption
+from sameline.reports.pictures.captions import conclusion_caption, named
 from sameline.reports.pictures.columns import (
     Columns,
     columns,
@@ -112,11 +112,11 @@ def _drawn(scene: _Scene, width: float, runs: Sequence[DrawnRun], *, behind: boo
     scale = scale_of([*values, *ends] or [0.0], (scene.subject.lower, scene.subject.upper))
     many = len(scene.groups)
     crowded = many > MOST_BRACKETED
-    named = shortened([safe(label) for label in scene.labels], width * 0.16, SMALL) if crowded else []
+    brief = shortened([safe(label) for label in scene.labels], width * 0.16, SMALL) if crowded else []
     made = columns(
-        max(many, 1), width, heading_width([*_HEADINGS, scene.subject.revision.grouping, *named], scale.width)
+        max(many, 1), width, heading_width([*_HEADINGS, scene.subject.revision.grouping, *brief], scale.width)
     )
-    blocks, short = _blocks(scene, made, scale, named)
+    blocks, short = _blocks(scene, made, scale, brief)
     words = " ".join(filter(None, (_words(scene, runs, crowded=crowded), shortened_words(short))))
     caption = conclusion_caption(scene.conclusion, scene.subject, runs, words, behind=behind)
     return compose(width, scene.conclusion.name, _subtitle(scene), blocks, caption, _told(scene))
@@ -124,15 +124,15 @@ def _drawn(scene: _Scene, width: float, runs: Sequence[DrawnRun], *, behind: boo
 
 def _subtitle(scene: _Scene) -> str:
     c, s = scene.conclusion, scene.subject
-    named = s.name if s.name == s.characteristic else f"{s.name} ({s.characteristic})"
-    return f"{named}, {s.unit}; by {s.revision.grouping}; version {c.version}, {look_words(c.look)}"
+    what = f"{named(s.name, s.characteristic)}, {s.unit}; by {s.revision.grouping}"
+    return f"{what}; version {c.version}, {look_words(c.look)}"
 
 
 def _blocks(
-    scene: _Scene, made: Columns, scale: Scale, named: Sequence[str]
+    scene: _Scene, made: Columns, scale: Scale, brief: Sequence[str]
 ) -> tuple[list[Block], list[tuple[str, str]]]:
-    naming, short = names(made, scene.subject.revision.grouping, scene.labels)
-    blocks = [] if named else list(_bracketed(scene, made))
+    naming, short = names(made, scene.subject.revision.grouping, brief or scene.labels)
+    blocks = [] if brief else list(_bracketed(scene, made))
     blocks += [made.block(4.0, lambda _axes: None), made.block(FIELD, lambda axes: _field(axes, scene, made, scale))]
     blocks += [*_lined(scene, made), naming]
     blocks.append(
@@ -140,10 +140,10 @@ def _blocks(
     )
     blocks.append(row(made, "runs", [str(g.runs) for g in scene.groups], ids="runs-figure"))
     blocks.append(row(made, "values", [str(g.replicates) for g in scene.groups], ids="values-figure"))
-    if named:
-        blocks.append(matrix(made, scene.labels, scene.pairs, named))
-        short = [*short, *((s, n) for s, n in zip(named, map(safe, scene.labels), strict=True) if s != n)]
-    return blocks, list(dict.fromkeys(short))
+    if brief:
+        blocks.append(matrix(made, scene.labels, scene.pairs, brief))
+        short = [(s, n) for s, n in zip(brief, map(safe, scene.labels), strict=True) if s != n]
+    return blocks, short
 
 
 def _field(axes: Axes, scene: _Scene, made: Columns, scale: Scale) -> None:

@@ -68,21 +68,20 @@ def draw_mean(axes: Axes, at: float, mean: float, lower: float | None, upper: fl
     disc.set_gid(f"{stem}-mean")
 
 
-def verdict_mark(axes: Axes, x: float, y: float, pair: PairAnswer, size: float = 4.4) -> None:
-    """The mark of a verdict: filled where a difference is shown, open where none is."""
-    filled = pair.verdict in FILLED
+def verdict_marks(axes: Axes, verdict: str, places: Sequence[tuple[float, float]], size: float) -> None:
+    """The mark of a verdict at each place: filled where a difference is shown, open where none is."""
+    filled = verdict in FILLED
     ink = STRONG if filled else INK
     axes.plot(
-        [x],
-        [y],
+        [x for x, _ in places],
+        [y for _, y in places],
         ls="",
-        marker=MARKERS[pair.verdict],
+        marker=MARKERS[verdict],
         ms=size,
         mew=0.9,
         mec=ink,
         mfc=ink if filled else "white",
         zorder=6,
-        clip_on=False,
     )
 
 

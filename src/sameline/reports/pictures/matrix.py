@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 from sameline.reports.pictures.columns import Columns
 from sameline.reports.pictures.drawing import Block
-from sameline.reports.pictures.marks import stars, verdict_mark
+from sameline.reports.pictures.marks import stars, verdict_marks
 from sameline.reports.pictures.style import FILLED, HAIR, MM, SMALL
 
 if TYPE_CHECKING:
@@ -37,6 +37,13 @@ def matrix(
     high = ROW * many + 1.5
     size = min(4.0, min(made.each, ROW) * MM * 0.62)
 
+    by_verdict: dict[str, list[tuple[float, float]]] = {}
+    for at, label in enumerate(labels):
+        for before in range(at):
+            pair = pairs.get(frozenset((label, labels[before])))
+            if pair is not None:
+                by_verdict.setdefault(pair.verdict, []).append((before, at))
+
     def draw(axes: Axes) -> None:
         axes.set_ylim(many - 0.4, -0.6)
         for at, name in enumerate(short):
@@ -51,11 +58,9 @@ def matrix(
                 size=SMALL,
             )
             axes.plot([-0.5, at - 0.5], [at + 0.5, at + 0.5], color=HAIR, lw=0.35, zorder=0.5)
-            for before in range(at):
-                pair = pairs.get(frozenset((labels[at], labels[before])))
-                if pair is not None:
-                    verdict_mark(axes, before, at, pair, size)
-            axes.plot([at - 0.3, at + 0.3], [at - 0.0, at], color=HAIR, lw=0.8)
+            axes.plot([at - 0.3, at + 0.3], [at, at], color=HAIR, lw=0.8)
+        for verdict, places in by_verdict.items():
+            verdict_marks(axes, verdict, places, size)
 
     return made.block(high, draw)
 

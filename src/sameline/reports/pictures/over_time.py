@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
-from sameline.reports.pictures.captions import shown_caption
+from sameline.reports.pictures.captions import named, shown_caption
 from sameline.reports.pictures.columns import columns, heading_width, names, row, shortened_words
 from sameline.reports.pictures.drawing import Picture, check_width, compose, drawing
 from sameline.reports.pictures.marks import RUN_WORDS, draw_runs, special_words
@@ -61,7 +61,7 @@ def over_time_picture(shown: Shown, *, width: float = 170.0) -> Picture:
             row(made, "values", [str(sum(len(r.values) for r in own[label])) for label in labels], ids="values-figure"),
         ]
         caption = shown_caption(shown, f"{_words(shown)} {shortened_words(short)}".strip())
-        subtitle = f"{shown.name} ({shown.characteristic}), {shown.unit}; {shown.filter}, over time"
+        subtitle = f"{named(shown.name, shown.characteristic)}, {shown.unit}; {shown.filter}, over time"
         return compose(width, shown.name, subtitle, blocks, caption, _told(shown, own, means, decimals))
 
 

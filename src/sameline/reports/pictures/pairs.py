@@ -11,10 +11,12 @@ from sameline.reports.differ import verdict_words
 from sameline.reports.pictures.captions import conclusion_caption
 from sameline.reports.pictures.columns import shortened_words
 from sameline.reports.pictures.drawing import Picture, check_width, compose, drawing
-from sameline.reports.pictures.forest import ForestRow, Lines, forest
+from sameline.reports.pictures.fitting import safe, shortened
+from sameline.reports.pictures.forest import NARROW, ForestRow, Lines, forest
 from sameline.reports.pictures.marks import VERDICT_WORDS
 from sameline.reports.pictures.plain import axis_lines
 from sameline.reports.pictures.scale import scale_of
+from sameline.reports.pictures.style import SMALL
 from sameline.reports.text import count, interval, number, p_value, percent
 
 if TYPE_CHECKING:
@@ -47,12 +49,13 @@ def pairs_picture(
         raise CallError(f"{conclusion.name} v{conclusion.version} has no pair with a difference to draw")
     drawn = _strongest(judged)
     decimals = subject.decimals + 1
-    rows = [pair_row(f"{p.b} minus {p.a}", p, decimals) for p in drawn]
     lines = Lines(((0.0, "0"),), subject.margin)
     words = [_words(subject), _rest(conclusion, drawn)]
     with drawing():
+        called, short = _called(drawn, width)
+        rows = [pair_row(f"{called[p.b]} minus {called[p.a]}", p, decimals) for p in drawn]
         scale = scale_of(ends_of(rows), () if subject.margin is None else (-subject.margin, subject.margin))
-        blocks, short = forest(rows, headings(subject), scale, subject.unit, width, lines)
+        blocks, _ = forest(rows, headings(subject), scale, subject.unit, width, lines)
         told = " ".join(filter(None, (*words, shortened_words(short))))
         caption = conclusion_caption(conclusion, subject, runs, told, behind=behind)
         return compose(
@@ -63,6 +66,14 @@ def pairs_picture(
             caption,
             forest_lines(rows, decimals, subject),
         )
+
+
+def _called(drawn: Sequence[PairAnswer], width: float) -> tuple[dict[str, str], list[tuple[str, str]]]:
+    """What each group is called where room is short, and what had to be shortened, as (shown, name)."""
+    labels = list(dict.fromkeys(label for p in drawn for label in (p.a, p.b)))
+    full = [safe(label) for label in labels]
+    names = shortened(full, width * (0.38 if width < NARROW else 0.13), SMALL)
+    return dict(zip(labels, names, strict=True)), [(s, n) for s, n in zip(names, full, strict=True) if s != n]
 
 
 def pair_row(name: str, p: PairAnswer, decimals: int) -> ForestRow:

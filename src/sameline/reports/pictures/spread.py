@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from sameline.reports.pictures.captions import SAFETY, aside_words
+from sameline.reports.pictures.captions import SAFETY, aside_words, named
 from sameline.reports.pictures.drawing import Picture, check_width, compose, drawing
 from sameline.reports.pictures.forest import ForestRow, Lines, forest
 from sameline.reports.pictures.plain import axis_lines
@@ -38,7 +38,7 @@ def spread_picture(fit: NestedFit, shown: Shown, *, alpha: float = 0.05, width: 
     """
     check_width(width)
     found = fit.spread(alpha)
-    unit, decimals, named = shown.unit, shown.decimals, f"{shown.name} ({shown.characteristic})"
+    unit, decimals, title = shown.unit, shown.decimals, named(shown.name, shown.characteristic)
     rows = [_row(each, decimals + 2) for each in (*found.levels, *found.precision)]
     headings = ("sd", f"{percent(1 - alpha)} interval", "share")
     with drawing():
@@ -52,7 +52,7 @@ def spread_picture(fit: NestedFit, shown: Shown, *, alpha: float = 0.05, width: 
         parts = [
             f"Disc: standard deviation; line: its {percent(1 - alpha)} interval, for each alone ({found.method}).",
             "Share: of the variance.",
-            f"{named} in {unit}; {shown.filter}. Procedure: nested model by REML, a mean for each material.",
+            f"{title} in {unit}; {shown.filter}. Procedure: nested model by REML, a mean for each material.",
             "Repeatability and intermediate precision: as ISO 5725 has them.",
             f"n: {amounts}; what is only a bound is left out.",
             aside_words(shown.runs, ()),
@@ -65,7 +65,7 @@ def spread_picture(fit: NestedFit, shown: Shown, *, alpha: float = 0.05, width: 
             [(r.name, r.lower, r.middle, r.upper, r.figures[2]) for r in rows], decimals + 2, (0.0,), unit
         )
         return compose(
-            width, named, f"Spread as standard deviations, {unit}; {shown.filter}", blocks, " ".join(parts), told
+            width, title, f"Spread as standard deviations, {unit}; {shown.filter}", blocks, " ".join(parts), told
         )
 
 

@@ -48,8 +48,8 @@ def _faces(characters: frozenset[str]) -> str:
 def _subset(name: str, characters: frozenset[str]) -> bytes:
     """The typeface with these characters only, the same bytes each time."""
     import matplotlib as mpl
-    from fontTools import subset  # type: ignore[import-untyped]  # it publishes no types
-    from fontTools.ttLib import TTFont  # type: ignore[import-untyped]  # the same
+    from fontTools import subset
+    from fontTools.ttLib import TTFont
 
     options = subset.Options(hinting=False, layout_features=[], name_IDs=[1, 2], notdef_outline=True)
     options.drop_tables += ["GSUB", "GPOS", "GDEF", "kern", "FFTM"]
