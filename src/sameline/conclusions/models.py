@@ -29,6 +29,7 @@ if TYPE_CHECKING:
     from sameline.stats.nested.pairs import NestedPairs
     from sameline.stats.pairs_result import PairsResult
 
+SPREAD_LEVEL = 0.01  # so rarely does the caution on unequal spreads come up where spreads are equal
 _ADJUST = {"tukey-kramer": "tukey"}
 
 
@@ -224,8 +225,28 @@ def _nested(revision: Revision, inputs: Inputs) -> Judged:
         components=tuple(
             ComponentAnswer(c.name, c.variance, _square(c.lower), _square(c.upper)) for c in fit.spread().levels
         ),
-        cautions=tuple(CautionAnswer(c.code, c.text) for c in fit.cautions),
+        cautions=(*(CautionAnswer(c.code, c.text) for c in fit.cautions), *_unequal_spread(revision, inputs)),
     )
+
+
+def _unequal_spread(revision: Revision, inputs: Inputs) -> Iterator[CautionAnswer]:
+    """The nested model gives the units of all groups one spread; where they show otherwise, that is said."""
+    from sameline.stats.diagnostics import diagnose
+    from sameline.stats.samples import gather
+
+    units = units_of(revision, inputs)
+    tests = diagnose(gather([u.value for u in units], [u.group for u in units])).tests
+    found = [tests[name] for name in ("levene-median", "bartlett") if name in tests]
+    found = [test for test in found if test.p_value < SPREAD_LEVEL]
+    if not found:
+        return
+    evidence = ", ".join(f"{test.name} p = {test.p_value:.2g}" for test in found)
+    text = (
+        f"the units of the groups scatter unequally ({evidence}), and this model gives them one spread: with one of "
+        "five groups scattering three times as widely, looks without end claimed falsely in 13 % of cases at a nominal "
+        "5 %; the unequal model does not assume it"
+    )
+    yield CautionAnswer("unequal-spread", text)
 
 
 def _known(inputs: Inputs) -> KnownSpread | None:
