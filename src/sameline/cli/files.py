@@ -23,10 +23,10 @@ from sameline.cli.common import (
 from sameline.errors import CallError, FindingsError
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
+    from collections.abc import Callable, Iterable
 
     from sameline.intake.rawfiles import RawFile
-    from sameline.lab import Taken
+    from sameline.lab import Lab, Taken
 
 
 def add_to(app: typer.Typer) -> None:
@@ -38,17 +38,47 @@ def take(
     files: Annotated[list[str], typer.Argument(metavar="FILE…", help="The files; - for standard input.")],
     check: Annotated[bool, typer.Option("--check", help="Only report what is in them; record nothing.")] = False,
     as_they_stand: Annotated[bool, typer.Option("--as-they-stand", help="Record values that are asked about.")] = False,
+    good_runs: Annotated[
+        Path | None,
+        typer.Option("--good-runs", help="Record the runs without a fault; write the rest into this folder."),
+    ] = None,
+    mark: Annotated[
+        Path | None, typer.Option("--mark", help="Write a copy of an XLSX file with the cells of findings marked.")
+    ] = None,
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
     by: ByOption = None,
 ) -> None:
-    """Take in files of results: every run of a file, or none."""
+    """Take in files of results: every run of a file that is not recorded yet, or none."""
     with open_store(store, by) as lab:
-        taken = lab.take(_opened(files), check_only=check, as_they_stand=as_they_stand, progress=_progress())
+        opened = _opened(files)
+        if mark is not None:
+            opened = [_marked(lab, opened, mark)]
+        taken = lab.take(
+            opened, check_only=check, as_they_stand=as_they_stand, good_runs=good_runs, progress=_progress()
+        )
     if check:
         _report(taken, as_json=as_json)
         return
     _show(taken, as_json=as_json)
+
+
+def _marked(lab: Lab, files: list[Path | str | RawFile], out: Path) -> RawFile:
+    """Write the marked copy of a workbook if there is anything to mark; returns the workbook, read once."""
+    from sameline.intake.marked import marked_copy
+    from sameline.intake.rawfiles import RawFile, load
+
+    if len(files) != 1:
+        raise CallError("--mark takes one file", advice="take the others in by themselves")
+    if out.exists():
+        raise CallError("there is a file here already", where=str(out), advice="name another with --mark")
+    raw = files[0] if isinstance(files[0], RawFile) else load(files[0])
+    found = lab.take([raw], check_only=True).intake
+    if found.findings:
+        out.write_bytes(marked_copy(raw, found))
+        marks = f"{len(found.findings)} finding{'s' if len(found.findings) > 1 else ''} marked"
+        say(f"{out}: a copy of {raw.name} with {marks}; mend the original, not the copy")
+    return raw
 
 
 def _opened(files: list[str]) -> list[Path | str | RawFile]:
@@ -74,13 +104,14 @@ def _progress() -> Callable[[str, int], None] | None:
 
 
 def _report(taken: Taken, *, as_json: bool) -> None:
-    findings = taken.intake.findings
+    findings = [str(finding) for finding in taken.intake.findings]
     if as_json:
-        write_json({"runs": len(taken.intake.runs), "findings": [str(f) for f in findings]})
+        write_json({"runs": len(taken.intake.runs), "recorded_already": taken.passed, "findings": findings})
     else:
+        _say_all(taken.passed)
         say(f"{len(taken.intake.runs)} runs without a fault; nothing was recorded, as asked")
     if findings:
-        raise FindingsError("the files have findings", [str(f) for f in findings])
+        raise FindingsError("the files have findings", findings)
 
 
 def _show(taken: Taken, *, as_json: bool) -> None:
@@ -88,6 +119,7 @@ def _show(taken: Taken, *, as_json: bool) -> None:
     from sameline.reports.documents import outcome_document
     from sameline.reports.runs import runs_summary
 
+    _say_all(taken.passed)
     if as_json:
         write_json([outcome_document(outcome.entry, outcome.runs, outcome.conclusions) for outcome in taken.outcomes])
     for (source, drafts), outcome in zip(by_source(taken.intake), taken.outcomes, strict=True):
@@ -97,3 +129,18 @@ def _show(taken: Taken, *, as_json: bool) -> None:
         say(f"{source.name}: taken in, entry {outcome.entry}")
         write(runs_summary(outcome.runs, drafts, taken.facts))
         say_changes(outcome)
+    _say_left(taken)
+
+
+def _say_left(taken: Taken) -> None:
+    """Say what was not taken, and where it waits."""
+    if not taken.intake.refusals:
+        return
+    say("not everything was taken in:")
+    _say_all(f"  {finding}" for finding in taken.intake.refusals)
+    _say_all(f"{path}: the rest, to be mended and taken in" for path in taken.rest)
+
+
+def _say_all(lines: Iterable[str]) -> None:
+    for line in lines:
+        say(line)

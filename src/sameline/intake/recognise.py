@@ -30,12 +30,14 @@ class Recognition:
         same: recorded runs that stand in the files again, value for value.
         changed: recorded runs that stand in the files with other values.
         findings: all of this, said; looks-alikes among the new ones are questions.
+        passed: those of the findings that concern `same`, in its order: nothing need be done about them.
     """
 
     new: tuple[DraftRun, ...]
     same: tuple[KnownRun, ...]
     changed: tuple[KnownRun, ...]
     findings: tuple[Finding, ...]
+    passed: tuple[Finding, ...] = ()
 
 
 def keys_of(intake: Intake) -> frozenset[RunKey]:
@@ -50,7 +52,8 @@ def recognise(
 
     Args:
         intake: what files hold.
-        known: the recorded runs of `keys_of(intake)`, as they stand today (amendments included).
+        known: the recorded runs of `keys_of(intake)`, as they stand today (amendments included), and amended ones a
+            second time as they were first recorded: a run that agrees with either is the same.
         digests: SHA-256 of files taken in before -> the entry that holds them.
     """
     gathered = _Gathered()
@@ -74,25 +77,30 @@ class _Gathered:
         self.same: list[KnownRun] = []
         self.changed: list[KnownRun] = []
         self.findings: list[Finding] = []
+        self.passed: list[Finding] = []
 
     def closed(self) -> Recognition:
-        return Recognition(tuple(self.new), tuple(self.same), tuple(self.changed), tuple(self.findings))
+        return Recognition(
+            tuple(self.new), tuple(self.same), tuple(self.changed), tuple(self.findings), tuple(self.passed)
+        )
 
     def look(self, run: DraftRun, recorded: Sequence[KnownRun], file: str, sheet: str | None) -> None:
-        own = next((known for known in recorded if _occasion(known.run) == _occasion(run)), None)
-        if own is None:
+        own = [known for known in recorded if _occasion(known.run) == _occasion(run)]
+        if not own:
             self.new.append(run)
             alike = next((known for known in recorded if _alike(known.run, run)), None)
             if alike is not None:
                 self._say(run, file, sheet, _looks_like(alike), "is it another run?", question=True)
             return
-        differences = _differences(own.run, run)
-        if not differences:
-            self.same.append(own)
-            self._say(run, file, sheet, f"this run is recorded already, in entry {own.entry}", "leave it out")
+        same = next((known for known in own if not _differences(known.run, run)), None)
+        if same is not None:
+            self.same.append(same)
+            self._say(run, file, sheet, f"this run is recorded already, in entry {same.entry}", "leave it out")
+            self.passed.append(self.findings[-1])
             return
-        self.changed.append(own)
-        problem = f"this run is recorded already, in entry {own.entry}, with other values: {'; '.join(differences)}"
+        self.changed.append(own[0])
+        differences = "; ".join(_differences(own[0].run, run))
+        problem = f"this run is recorded already, in entry {own[0].entry}, with other values: {differences}"
         self._say(run, file, sheet, problem, "amend the recorded run, or leave this one out")
 
     def _say(

@@ -108,32 +108,41 @@ class Lab(Reads):
         *,
         check_only: bool = False,
         as_they_stand: bool = False,
+        good_runs: Path | None = None,
         progress: Callable[[str, int], None] | None = None,
     ) -> Taken:
-        """Take in files: every run of every file, or none.
+        """Take in files: every run of every file that is not recorded yet, or none.
 
         Args:
             paths: the files.
             check_only: report what is in them and record nothing.
             as_they_stand: record runs with values that were asked about (far from all recorded, for example).
+            good_runs: record the runs without a fault, and write what is left of each file into this folder, to be
+                mended.
             progress: told the file's name and the rows read now and then.
 
         Raises:
-            FindingsError: the files have findings; nothing was recorded.
+            FindingsError: the files have findings, or hold nothing new; nothing was recorded.
         """
-        from sameline.intake.files import read_files
         from sameline.intake.rawfiles import RawFile, load
+        from sameline.lab import taking
 
         opened = [path if isinstance(path, RawFile) else load(path) for path in paths]
         self._refuse_known([raw.source() for raw in opened])
-        with self.register() as register:
-            found = read_files(opened, register, progress=progress)
-            facts = {code: register.characteristics[code] for code in {run.characteristic for run in found.runs}}
-        if not check_only:
-            refuse(found, as_they_stand=as_they_stand)
-            outcomes = tuple(self.record(drafts, source) for source, drafts in by_source(found))
-            return Taken(found, facts, outcomes)
-        return Taken(found, facts)
+        with self.reading() as reading:
+            seen = taking.examine(reading, self._clock(), opened, progress)
+        taken = Taken(seen.intake, seen.facts, seen.passed)
+        if check_only:
+            return taken
+        refuse(seen.intake, as_they_stand=as_they_stand, good_runs=good_runs is not None)
+        taking.refuse_nothing_new(seen)
+        rest = taking.write_rest(opened, seen, good_runs) if good_runs is not None and seen.intake.refusals else ()
+        try:
+            outcomes = tuple(self.record(drafts, source) for source, drafts in by_source(seen.intake))
+        except BaseException:
+            taking.remove(rest)
+            raise
+        return replace(taken, outcomes=outcomes, rest=rest)
 
     def amend(self, measurement: Measurement, value: DraftMeasurement, *, reason: str) -> Outcome:
         """Correct a recorded value; the original stays readable."""

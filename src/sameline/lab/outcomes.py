@@ -9,6 +9,8 @@ from typing import TYPE_CHECKING
 from sameline.errors import FindingsError
 
 if TYPE_CHECKING:
+    from pathlib import Path
+
     from sameline.intake.files import Intake
     from sameline.records.answers import Conclusion
     from sameline.records.drafts import CharacteristicFacts, DraftRun, SourceFile
@@ -54,17 +56,21 @@ class Taken:
     Attributes:
         intake: runs and findings.
         facts: the characteristics of the runs, by code.
-        outcomes: one for each file that was recorded.
+        passed: what is said of runs that are recorded already and were passed over, a line for each file and entry.
+        outcomes: one for each file of which something was recorded, as `by_source` lists them.
+        rest: the files that hold what could not be taken, to be mended.
     """
 
     intake: Intake
     facts: dict[str, CharacteristicFacts]
+    passed: tuple[str, ...] = ()
     outcomes: tuple[Outcome, ...] = ()
+    rest: tuple[Path, ...] = ()
 
 
-def refuse(found: Intake, *, as_they_stand: bool) -> None:
+def refuse(found: Intake, *, as_they_stand: bool, good_runs: bool = False) -> None:
     """Refuse files with findings; questions may be answered by taking the values as they stand."""
-    if found.refusals:
+    if found.refusals and not (good_runs and found.runs):
         raise FindingsError(
             "nothing was recorded", [str(f) for f in found.findings], advice="mend the file and take it again"
         )
@@ -77,8 +83,10 @@ def refuse(found: Intake, *, as_they_stand: bool) -> None:
 
 
 def by_source(found: Intake) -> Iterator[tuple[SourceFile, list[DraftRun]]]:
-    """The runs of each file; files stand in the order in which they were read."""
+    """The runs of each file that has any; files stand in the order in which they were read."""
     parts = list(found.parts)
     for source in found.sources:
         own = [part for part in parts if part.file == source.name]
-        yield source, [run for part in own for run in part.runs]
+        runs = [run for part in own for run in part.runs]
+        if runs:
+            yield source, runs
