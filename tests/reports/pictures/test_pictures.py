@@ -179,14 +179,14 @@ def test_marks_for_what_is_alike_say_so(scene):
 
 
 @pytest.mark.parametrize("text", HOSTILE)
-def test_any_text_is_only_text(scene, text, width=85):
+def test_any_text_is_only_text(scene, text):
     labels = [f"{text} {n}" for n in (1, 2, 3)]
     conclusion, subject, runs = scene(
         labels, name=text, subject={"name": text, "unit": text, "method": text}, upper=23.0
     )
     for picture in (
-        groups_picture(conclusion, subject, runs, width=width),
-        pairs_picture(conclusion, subject, runs, width=width),
+        groups_picture(conclusion, subject, runs, width=85),
+        pairs_picture(conclusion, subject, runs, width=85),
     ):
         root = ET.fromstring(picture.svg())  # noqa: S314 - whether it is well-formed is the question
         assert not [e for e in root.iter() if e.tag.rpartition("}")[2] in {"script", "b", "image", "foreignObject"}]

@@ -232,7 +232,15 @@ def _interval(axes: Axes, y: float, place: int, row: ForestRow, scale: Scale) ->
         line.set_gid(f"row-{place + 1}-interval")
         for end, given, arrow in ((ends[0], row.lower, "<"), (ends[1], row.upper, ">")):
             axes.plot(
-                [end], [y], ls="", marker="|" if given is not None else arrow, ms=5.0, mew=1.1, color=ink, zorder=4
+                [end],
+                [y],
+                ls="",
+                marker="|" if given is not None else arrow,
+                ms=5.0,
+                mew=1.1,
+                color=ink,
+                zorder=4,
+                clip_on=False,
             )
     if row.middle is not None:
         filled = row.verdict is None or row.verdict in FILLED
