@@ -33,6 +33,8 @@ class Sizes:
         plans: the cheapest plan, alternatives and the power curve; None where no plan reaches the power.
         refusal: why there is no plan, if there is none.
         settling: for each undecided pair of a comparison, what would settle it.
+        detectable: the smallest true difference that the present data show with the wanted power at one look, pair by
+            pair: labels and difference.
         price: what looking without end costs beside one look, in units a group; None where it cannot be said.
     """
 
@@ -42,6 +44,7 @@ class Sizes:
     refusal: str | None = None
     settling: tuple[Settling, ...] = ()
     price: Price | None = None
+    detectable: tuple[tuple[str, str, float], ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -103,7 +106,8 @@ def sizes_of(
         for p in conclusion.answer.pairs
         if p.verdict == "undecided" and p.a in fit.groups and p.b in fit.groups and p.reason is None
     )
-    return Sizes(found.components, found.source, found.plans, found.refusal, settling, found.price)
+    shown = _detectable(fit, wanted)
+    return Sizes(found.components, found.source, found.plans, found.refusal, settling, found.price, shown)
 
 
 def _fit(grouping: str, kept: Sequence[Value]) -> NestedFit:
@@ -111,6 +115,27 @@ def _fit(grouping: str, kept: Sequence[Value]) -> NestedFit:
 
     batches = None if grouping == "batch" else [v.batch for v in kept]
     return fit_nested([v.value for v in kept], [v.group for v in kept], batches, [v.run for v in kept])
+
+
+def _detectable(fit: NestedFit, wanted: Wanted) -> tuple[tuple[str, str, float], ...]:
+    """The power of a pair rises with its true difference: the difference is found by halving."""
+    from scipy.optimize import brentq
+
+    from sameline.stats.plans import Family
+
+    family = Family(wanted.groups, wanted.alpha, wanted.procedure)
+    pairs = fit.pairs(wanted.alpha, wanted.procedure if wanted.procedure != "dunnett" else "tukey")
+    found = []
+    for p in pairs.pairs:
+        if not p.standard_error or not p.df:
+            continue
+        error, df = p.standard_error, p.df
+        high = error
+        while family.power(high, error, df) < wanted.power:
+            high *= 2
+        difference = brentq(lambda d, e=error, f=df: family.power(d, e, f) - wanted.power, 0.0, high, rtol=1e-12)
+        found.append((p.a, p.b, float(difference)))
+    return tuple(found)
 
 
 def _plans(components: Mapping[str, float], wanted: Wanted) -> tuple[PlanTable | None, str | None]:

@@ -78,6 +78,11 @@ def sizes_text(found: Sizes, unit: str) -> list[str]:
             "  Looking without end has its price: until every interval is as short as the difference to either side, "
             f"{price.always} units a group instead of {price.single}."
         )
+    if found.detectable:
+        sizes = [difference for _, _, difference in found.detectable]
+        low, high = f"{min(sizes):.3g}", f"{max(sizes):.3g}"
+        spanned = low if low == high else f"{low} to {high}"
+        lines.append(f"  The present data show a true difference of {spanned} {unit} with that power, at one look.")
     if found.settling:
         lines += ["", "To settle the undecided pairs at one look:"]
         lines += [f"  {each.text}" for each in found.settling]
@@ -125,5 +130,6 @@ def sizes_document(found: Sizes, unit: str) -> dict[str, Any]:
         "alternatives": [p._asdict() for p in plans.alternatives] if plans else [],
         "curve": [list(point) for point in plans.curve] if plans else [],
         "settling": [asdict(each) for each in found.settling],
+        "detectable": [{"a": a, "b": b, "difference": difference} for a, b, difference in found.detectable],
         "price": asdict(found.price) if found.price else None,
     }
