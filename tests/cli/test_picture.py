@@ -21,14 +21,19 @@ KINDS = {
 
 @pytest.mark.parametrize("kind", KINDS)
 def test_each_picture_is_written_told_and_documented(unchanged, kind):
-    told = unchanged.done("picture", *KINDS[kind])
-    assert "ledger entry" in " ".join(told.out.split())
     ran = unchanged.done("picture", *KINDS[kind], "--to", "a.svg", "--to", "a.png", "--width", 85, "--json")
     assert (unchanged.folder / "a.svg").read_bytes().startswith(b"<?xml")
     assert (unchanged.folder / "a.png").read_bytes().startswith(b"\x89PNG")
     assert ran.document.keys() == {"title", "caption", "files", "text"}
     assert ran.document["files"] == ["a.svg", "a.png"]
+    assert "ledger entry" in ran.document["caption"]
     assert ran.err.splitlines() == ["a.svg: written", "a.png: written"]
+
+
+def test_without_a_file_it_is_told_as_text(unchanged):
+    told = unchanged.done("picture", "groups", "pair").out
+    assert told.startswith("pair\n")
+    assert "ledger entry" in " ".join(told.split())
 
 
 def test_an_older_state_is_drawn_as_it_was(answered):

@@ -42,8 +42,7 @@ class Read:
         return lambda place: low + (place - at_low) / (at_high - at_low) * (high - low)
 
 
-@pytest.mark.parametrize("many", [2, 6, 20])
-@pytest.mark.parametrize("width", [85, 170])
+@pytest.mark.parametrize(("many", "width"), [(2, 170), (6, 85), (20, 85)])
 def test_groups_stand_at_their_means_and_intervals(scene, many, width):
     conclusion, subject, runs = scene(many)
     read = Read(groups_picture(conclusion, subject, runs, width=width))
