@@ -253,6 +253,7 @@ def upgrade() -> None:
         sa.Column("known_spread", sa.Integer(), nullable=True),
         sa.Column("sessions", sa.Integer(), nullable=True),
         sa.Column("window_units", sa.Integer(), nullable=True),
+        sa.Column("window_months", sa.Integer(), nullable=True),
         sa.Column("digest", sa.LargeBinary(), nullable=False),
         sa.CheckConstraint(
             "grouping IN ('batch', 'material', 'supplier')", name=op.f("ck_comparison_revision_grouping")

@@ -31,6 +31,9 @@ def test_a_checkpoint_proves_a_truncated_ledger(call, tmp_path):
     assert json.loads(good.out)["good"] is True
     call("add", "supplier", "CEDAR", "--name", "Cedar")
     call("verify", "--checkpoint", tmp_path / "point.txt")
+    later = json.loads(call("verify", "--since", tmp_path / "point.txt", "--json").out)
+    assert later["good"] is True
+    assert later["rows"] < json.loads(good.out)["rows"]
     other = tmp_path / "other.db"
     call("init", "--store", other, "--by", "ben")
     bad = call("verify", "--checkpoint", tmp_path / "point.txt", "--store", other, code=1)

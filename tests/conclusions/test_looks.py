@@ -328,10 +328,20 @@ def test_what_the_batches_of_a_session_share_is_taken_out_of_their_differences(l
     assert not lab.verify().findings
 
 
+def test_windows_by_months_go_by_when_a_run_was_tested(lab):
+    """Stated in March 2026: what was tested before belongs to the first window."""
+    lab.compare(statement("months", groups=("B1", "B2"), window_months=2, **NESTED))
+    for day in (1, 30, 62, 95, 130):  # February to June
+        session(lab, day, 70.0 + day / 1000, 70.1 - day / 1000, batches=("B1", "B2"))
+    state = json.loads(lab.conclusion("months").answer.looks_state)
+    assert set(state["windows"]) == {"1", "2"}
+    assert not lab.verify().findings
+
+
 def test_a_window_finds_a_late_change_that_the_whole_record_dilutes(lab):
     for name, window in (("whole", None), ("windows", 24)):
         lab.compare(statement(name, groups=("B1", "B2"), window_units=window, **NESTED))
-    means = noise(17, 18, groups=2) + np.where(np.arange(18)[:, None] >= 12, [0.0, 4.0], [0.0, 0.0])
+    means = noise(17, 22, groups=2) + np.where(np.arange(22)[:, None] >= 12, [0.0, 4.0], [0.0, 0.0])
     for day, row in enumerate(means, 1):
         session(lab, day, *row, batches=("B1", "B2"))
     windows = lab.conclusion("windows")
@@ -357,6 +367,8 @@ def test_a_window_finds_a_late_change_that_the_whole_record_dilutes(lab):
         ({"window_units": 12, "groups": ()}, "listed groups"),
         ({"window_units": 12, "looks": "single"}, "open looks"),
         ({"window_units": 4}, "too short"),
+        ({"window_months": 0}, "cannot be meant"),
+        ({"window_months": 1, "window_units": 12}, "by units or by months"),
     ],
 )
 def test_a_statement_of_looks_that_cannot_be_meant_is_refused(lab, change, word):

@@ -80,6 +80,9 @@ def compare(
     window: Annotated[
         int | None, typer.Option(help="With open looks: evidence also starts anew every so many units.")
     ] = None,
+    window_months: Annotated[
+        int | None, typer.Option(help="The same, every so many calendar months of testing.")
+    ] = None,
     reason: MaybeReasonOption = None,
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
@@ -113,6 +116,7 @@ def compare(
                 known_spread=known_spread,
                 sessions=sessions,
                 window_units=window,
+                window_months=window_months,
             ),
             model=model,
             procedure=procedure,

@@ -66,6 +66,9 @@ def verify(
         list[Path] | None,
         typer.Option("--checkpoint", help="A checkpoint's file that the ledger must still agree with."),
     ] = None,
+    since: Annotated[
+        Path | None, typer.Option(help="A checkpoint's file: check only what came after it, and that it still holds.")
+    ] = None,
     as_json: JsonOption = False,
     store: StoreOption = DEFAULT_STORE,
 ) -> None:
@@ -75,7 +78,7 @@ def verify(
     """
     given = [_checkpoint(path) for path in checkpoints or ()]
     with open_store(store) as lab:
-        report = lab.verify(_progress(), given)
+        report = lab.verify(_progress(), given, None if since is None else _checkpoint(since))
     if as_json:
         from sameline.reports.documents import verification_document
 

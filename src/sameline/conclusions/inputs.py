@@ -31,6 +31,7 @@ class Value:
         censored: whether only a bound is known.
         excluded: the cause, if it is set aside.
         before: whether it was recorded before the comparison's revision was stated.
+        tested_at: when (UTC, ISO 8601).
         session: label of the occasion on which it was tested; a run without one is an occasion of its own.
     """
 
@@ -43,6 +44,7 @@ class Value:
     excluded: str | None
     before: bool
     session: str
+    tested_at: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -98,6 +100,7 @@ def gather(reading: Reading, revision: Revision) -> Inputs:
             excluded=m.excluded,
             before=m.entry < revision.entry,
             session=m.session or f"run {m.run}",
+            tested_at=m.tested_at,
         )
         for m in found
     )

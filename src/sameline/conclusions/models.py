@@ -51,12 +51,14 @@ class Unit:
         value: its mean.
         values: how many values the mean is of.
         place: its place in the order of recording, from 0, those set aside counted too.
+        tested_at: when its first value was tested (UTC, ISO 8601).
     """
 
     group: str
     value: float
     values: int
     place: int
+    tested_at: str
 
 
 def judge(revision: Revision, inputs: Inputs, past: Past) -> Judged:
@@ -82,7 +84,7 @@ def units_of(revision: Revision, inputs: Inputs) -> tuple[Unit, ...]:
     for v in _in_order(inputs):
         gathered.setdefault(_key(kind, v), []).append(v)
     return tuple(
-        Unit(own[0].group, math.fsum(v.value for v in own) / len(own), len(own), places[key])
+        Unit(own[0].group, math.fsum(v.value for v in own) / len(own), len(own), places[key], own[0].tested_at)
         for key, own in gathered.items()
     )
 

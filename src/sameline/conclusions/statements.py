@@ -80,14 +80,18 @@ def check(statement: Statement) -> None:
 
 
 def _check_windows(statement: Statement) -> None:
-    if statement.window_units is None:
+    if statement.window_units is None and statement.window_months is None:
         return
+    if statement.window_units is not None and statement.window_months is not None:
+        raise CallError("windows go by units or by months", advice="leave out --window or --window-months")
     if statement.looks != "open" or not statement.groups or not has_exact_form(statement):
         raise CallError(
             "windows go with open looks at listed groups: batches on the nested model, or any on the pooled one",
-            advice="leave out --window",
+            advice="leave the windows out",
         )
-    if statement.window_units < 2 * len(statement.groups):
+    if statement.window_months is not None and statement.window_months < 1:
+        raise CallError(f"a window of {statement.window_months} months cannot be meant", advice="give 1 or more")
+    if statement.window_units is not None and statement.window_units < 2 * len(statement.groups):
         raise CallError(
             f"a window of {statement.window_units} units is too short for {len(statement.groups)} groups",
             advice="give at least two units a group",

@@ -7,7 +7,7 @@ from contextlib import contextmanager
 from typing import TYPE_CHECKING, Any
 
 from sameline.errors import CallError
-from sameline.records import comparisons, concluded, registry, runs, scope
+from sameline.records import comparisons, concluded, heading_maps, registry, runs, scope
 from sameline.records.lookups import read_facts, read_register
 from sameline.records.moments import read_moment
 from sameline.records.store import Reading, Store
@@ -20,6 +20,7 @@ if TYPE_CHECKING:
     from sameline.conclusions.diagnosis import Diagnosis
     from sameline.conclusions.planning import Sizes
     from sameline.conclusions.recompute import Verification
+    from sameline.intake.headings import HeadingMap
     from sameline.ledger.checkpoint import Checkpoint
     from sameline.records.answers import Answer, Conclusion
     from sameline.records.conclusion_signatures import Signature
@@ -158,12 +159,21 @@ class Reads:
             return read_trail(reading, **{**only, **moments})
 
     def verify(
-        self, progress: Callable[[str, int, int], None] | None = None, checkpoints: Sequence[Checkpoint] = ()
+        self,
+        progress: Callable[[str, int, int], None] | None = None,
+        checkpoints: Sequence[Checkpoint] = (),
+        since: Checkpoint | None = None,
     ) -> Verification:
-        """Check the ledger against the rows, and recompute every conclusion: every finding, not only the first."""
+        """Check the ledger against the rows, and recompute every conclusion: every finding, not only the first.
+
+        Args:
+            progress: told what is checked, how far it is, and how far it goes.
+            checkpoints: kept elsewhere; the ledger must still begin with what they stand for.
+            since: one of such; what it covers is taken as checked before.
+        """
         from sameline.conclusions.recompute import verify
 
-        return verify(self._store, progress, checkpoints)
+        return verify(self._store, progress, (*checkpoints, *([since] if since else [])), since)
 
     def signatures(self, conclusion: Conclusion) -> list[tuple[int, Signature]]:
         """The signatures on this version of a conclusion and on those before it, each with its version."""
@@ -179,6 +189,13 @@ class Reads:
 
         with self.reading(as_of) as reading:
             return read_keys(reading)
+
+    def maps(self, as_of: int | str | None = None) -> list[tuple[int, HeadingMap]]:
+        """The heading maps that hold, by name, each with the entry that kept it."""
+        from sameline.intake.headings import HeadingMap
+
+        with self.reading(as_of) as reading:
+            return [(kept.entry, HeadingMap.from_json(kept.form)) for kept in heading_maps.read_maps(reading)]
 
     def backup(self, path: Path) -> LedgerReport:
         """Copy the store to a new file while others use it, and check the copy."""

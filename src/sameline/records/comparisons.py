@@ -40,7 +40,8 @@ class Statement:
         spending: how a plan spends its error rate over looks.
         known_spread: whether the run-to-run spread of other batches may be used where these have one run each.
         sessions: whether what the batches of one session share is taken out of their differences.
-        window_units: with open looks, evidence also starts anew every so many units; None for no windows.
+        window_units: with open looks, evidence also starts anew every so many units; None for no such windows.
+        window_months: the same for calendar months of testing, counted from that of the statement.
     """
 
     name: str
@@ -63,6 +64,7 @@ class Statement:
     known_spread: bool = False
     sessions: bool = False
     window_units: int | None = None
+    window_months: int | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -73,6 +75,7 @@ class Revision:
         id, comparison, revision, entry: the row, its comparison's id, its number, the entry that stated it.
         name: the comparison's name.
         characteristic: id.
+        stated_at: when it was stated (UTC, ISO 8601).
         groups: ids of the listed groups in their order, or None where all that pass the filter are compared.
         control: id of the control group, or None.
     """
@@ -101,6 +104,8 @@ class Revision:
     known_spread: bool
     sessions: bool
     window_units: int | None
+    window_months: int | None
+    stated_at: str
 
 
 def state(act: Act, statement: Statement) -> int:
@@ -141,6 +146,7 @@ def state(act: Act, statement: Statement) -> int:
         known_spread=1 if statement.known_spread else None,
         sessions=1 if statement.sessions else None,
         window_units=statement.window_units,
+        window_months=statement.window_months,
         **{f"control_{statement.grouping}": control},
     )
     for place, code in enumerate(statement.groups, 1):
@@ -170,7 +176,11 @@ def find_comparison(connection: Connection, name: str) -> int:
 def read_revision(reading: Reading, comparison: int, *, revision_id: int | None = None) -> Revision:
     """The revision of a comparison that holds at the reading's position, or the one with this row id."""
     table = t.comparison_revision
-    query = select(table, t.comparison.c.name).join(t.comparison, table.c.comparison == t.comparison.c.id)
+    query = (
+        select(table, t.comparison.c.name, t.entry.c.at.label("stated_at"))
+        .join(t.comparison, table.c.comparison == t.comparison.c.id)
+        .join(t.entry, table.c.entry == t.entry.c.number)
+    )
     if revision_id is not None:
         query = query.where(table.c.id == revision_id)
     else:

@@ -142,6 +142,9 @@ source_file = recorded(
     Column("size", Integer, nullable=False),
 )
 
+# How files of one kind are read; of several under one name the last holds.
+heading_map = recorded("heading_map", Column("name", Text, nullable=False), Column("form", Text, nullable=False))
+
 run = recorded(
     "run",
     Column("batch", Integer, to("batch.id"), nullable=False),
@@ -231,7 +234,8 @@ comparison_revision = recorded(
     Column("spending", Text),
     Column("known_spread", Integer),  # 1 where the run-to-run spread of other batches may be used
     Column("sessions", Integer),  # 1 where what the batches of one session share is taken out of their differences
-    Column("window_units", Integer),  # evidence also starts anew every so many units
+    Column("window_units", Integer),  # evidence also starts anew every so many units,
+    Column("window_months", Integer),  # or every so many calendar months from the month of the statement
     UniqueConstraint("comparison", "revision"),
     CheckConstraint("grouping IN ('batch', 'material', 'supplier')", name="grouping"),
     CheckConstraint("listed IN (0, 1) AND known_spread IN (0, 1) AND sessions IN (0, 1)", name="truth"),

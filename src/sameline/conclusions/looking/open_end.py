@@ -1,8 +1,9 @@
 """Looks without end, on units: evidence that holds at every look, over the whole record and over stated windows.
 
 A comparison may state windows: its evidence also starts anew every so many units, in the order in which they were
-recorded (set aside or not, so that an exclusion moves no window). The whole record and the windows share the error
-rate (`sameline.stats.looks.windows`); intervals are those of the whole record.
+recorded (set aside or not, so that an exclusion moves no window), or every so many calendar months of testing, counted
+from the month in which it was stated (what was tested before that belongs to the first). The whole record and the
+windows share the error rate (`sameline.stats.looks.windows`); intervals are those of the whole record.
 """
 
 from __future__ import annotations
@@ -14,8 +15,11 @@ from sameline.conclusions.looking.telling import told
 from sameline.conclusions.looking.view import Looking, Plain, kept_reserve, remembered, state_before, unit_means_seen
 
 if TYPE_CHECKING:
+    from collections.abc import Callable
+
     from sameline.conclusions.judged import Judged
     from sameline.conclusions.models import Unit
+    from sameline.records.comparisons import Revision
     from sameline.stats.looks import LookResult
 
 _LEAST_PHI, _MOST_PHI = 1 / 64, 4.0
@@ -28,13 +32,13 @@ def judge_without_end(looking: Looking) -> Judged:
     memory = {} if looking.past.state is None else remembered(looking.past.state)
     phi, founders = _tuning(looking, memory), _founders(looking, memory)
     reserve = kept_reserve(looking, memory)
-    length = looking.revision.window_units
+    window = _window_rule(looking.revision)
     alpha = looking.revision.alpha
-    if length is None:
+    if window is None:
         result = _judge(looking, looking.units, memory.get("state"), alpha, phi, founders, reserve)
         return told(looking, result, {"founders": founders, "phi": phi, "reserve": reserve})
     whole = _judge(looking, looking.units, memory.get("state"), window_alpha(alpha, 0), phi, founders, reserve)
-    windows = _windows(looking, length, memory.get("windows", {}), phi, reserve)
+    windows = _windows(looking, window, memory.get("windows", {}), phi, reserve)
     states = {number: window.state.to_plain() for number, window in windows.items()}
     kept = {"founders": founders, "phi": phi, "reserve": reserve, "windows": states}
     return told(looking, _together(whole, windows, alpha), kept)
@@ -68,14 +72,14 @@ def _judge(
 
 
 def _windows(
-    looking: Looking, length: int, stored: dict[str, Any], phi: float, reserve: float
+    looking: Looking, window: Callable[[Unit], int], stored: dict[str, Any], phi: float, reserve: float
 ) -> dict[str, LookResult]:
     """Each window that has begun, judged on its own units; a comparison by windows lists its groups."""
-    from sameline.stats.looks import window_alpha, window_of
+    from sameline.stats.looks import window_alpha
 
     by_window: dict[int, list[Unit]] = {}
     for unit in looking.units:
-        by_window.setdefault(window_of(unit.place, length), []).append(unit)
+        by_window.setdefault(window(unit), []).append(unit)
     alpha = looking.revision.alpha
     return {
         str(number): _judge(
@@ -83,6 +87,23 @@ def _windows(
         )
         for number, units in sorted(by_window.items())
     }
+
+
+def _window_rule(revision: Revision) -> Callable[[Unit], int] | None:
+    """The window (1, 2, …) that a unit belongs to; None where the comparison states none."""
+    from sameline.stats.looks import window_of
+
+    if revision.window_units is not None:
+        length = revision.window_units
+        return lambda unit: window_of(unit.place, length)
+    if revision.window_months is not None:
+        months, start = revision.window_months, _month(revision.stated_at)
+        return lambda unit: window_of(max(_month(unit.tested_at) - start, 0), months)
+    return None
+
+
+def _month(moment: str) -> int:
+    return 12 * int(moment[:4]) + int(moment[5:7])
 
 
 def _together(whole: LookResult, windows: dict[str, LookResult], alpha: float) -> LookResult:
