@@ -11,6 +11,7 @@ if TYPE_CHECKING:
     from sameline.conclusions.diagnosis import Diagnosis
     from sameline.records.answers import Conclusion
     from sameline.reports.subject import Subject
+    from sameline.stats import DiagnosticTest, OverallTest
 
 _NAMES = {
     "one-way anova": "all groups alike, one common spread (analysis of variance)",
@@ -32,7 +33,7 @@ def diagnosis_text(found: Diagnosis, conclusion: Conclusion, subject: Subject) -
     lines = [f"{conclusion.name} v{conclusion.version}, a second look at its data: tests on {found.unit}", ""]
     rows = [
         (_NAMES[test.name], f"{test.statistic:.4g}", _df(test.df1, test.df2), p_value(test.p_value))
-        for test in (*found.overall, *found.diagnostics)
+        for test in _tests(found)
     ]
     lines += [*table(("", "statistic", "df", "p-value"), rows, "<>>>"), ""]
     lines += _equivalence(found, subject)
@@ -45,6 +46,10 @@ def diagnosis_text(found: Diagnosis, conclusion: Conclusion, subject: Subject) -
         "  These inform; none of them chooses a procedure or sets anything aside. Only a person does, with a cause.",
     ]
     return lines
+
+
+def _tests(found: Diagnosis) -> list[OverallTest | DiagnosticTest]:
+    return [*found.overall, *found.diagnostics]
 
 
 def _df(first: float | None, second: float | None) -> str:
@@ -91,7 +96,7 @@ def diagnosis_document(found: Diagnosis, conclusion: Conclusion) -> dict[str, An
         "comparison": conclusion.name,
         "version": conclusion.version,
         "unit": found.unit,
-        "tests": [asdict(test) for test in (*found.overall, *found.diagnostics)],
+        "tests": [asdict(test) for test in _tests(found)],
         "equivalence": [p._asdict() for p in own.pairs] if own else None,
         "suspects": [asdict(suspect) for suspect in found.suspects],
         "not_computed": found.not_computed,
