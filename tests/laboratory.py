@@ -9,6 +9,7 @@ from typing import Any
 
 from cryptography.hazmat.primitives.asymmetric.ed25519 import Ed25519PrivateKey
 
+from sameline.intake.headings import HeadingMap, MapColumn
 from sameline.lab import Lab, make_lab, open_lab
 from sameline.ledger.signatures import SigningKey, key_id
 from sameline.records.comparisons import Statement
@@ -17,6 +18,14 @@ from sameline.records.moments import utc_text
 
 NAME = "Northbank Testing"
 ZONE = "Europe/Vienna"
+HEADING_MAP = HeadingMap(
+    "drum list",
+    (
+        MapColumn("Drum", "batch"),
+        MapColumn("Day", "tested_at"),
+        MapColumn("Reading", "value", characteristic="hardness"),
+    ),
+)
 START = dt.datetime(2026, 3, 2, 8, tzinfo=dt.UTC)
 
 
@@ -114,4 +123,5 @@ def small(store: str, clock: Clock | None = None) -> Lab:
     lab.sign("batches", "prepared", key)
     lab.revoke_key(key_id(old.public), reason="the laptop is lost")
     lab.checkpoint(key)
+    lab.keep_map(HEADING_MAP)
     return lab

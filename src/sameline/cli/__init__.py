@@ -18,6 +18,7 @@ from sameline.cli import (
     correct,
     files,
     keep,
+    maps,
     picture,
     plan,
     recorded,
@@ -39,7 +40,7 @@ app = typer.Typer(
 STOPPED = 130
 """The exit code where a person stopped the command."""
 
-for group in (setup, register, bench, files, recorded, correct, ask, plan, picture, conform, audit, keep, tour):
+for group in (setup, register, bench, files, maps, recorded, correct, ask, plan, picture, conform, audit, keep, tour):
     group.add_to(app)
 
 

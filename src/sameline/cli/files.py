@@ -42,6 +42,9 @@ def take(
         Path | None,
         typer.Option("--good-runs", help="Record the runs without a fault; write the rest into this folder."),
     ] = None,
+    only_map: Annotated[
+        str | None, typer.Option("--map", help="Read with this heading map, where several fit.")
+    ] = None,
     mark: Annotated[
         Path | None, typer.Option("--mark", help="Write a copy of an XLSX file with the cells of findings marked.")
     ] = None,
@@ -53,9 +56,14 @@ def take(
     with open_store(store, by) as lab:
         opened = _opened(files)
         if mark is not None:
-            opened = [_marked(lab, opened, mark)]
+            opened = [_marked(lab, opened, mark, only_map)]
         taken = lab.take(
-            opened, check_only=check, as_they_stand=as_they_stand, good_runs=good_runs, progress=_progress()
+            opened,
+            check_only=check,
+            as_they_stand=as_they_stand,
+            good_runs=good_runs,
+            only_map=only_map,
+            progress=_progress(),
         )
     if check:
         _report(taken, as_json=as_json)
@@ -63,7 +71,7 @@ def take(
     _show(taken, as_json=as_json)
 
 
-def _marked(lab: Lab, files: list[Path | str | RawFile], out: Path) -> RawFile:
+def _marked(lab: Lab, files: list[Path | str | RawFile], out: Path, only_map: str | None) -> RawFile:
     """Write the marked copy of a workbook if there is anything to mark; returns the workbook, read once."""
     from sameline.intake.marked import marked_copy
     from sameline.intake.rawfiles import RawFile, load
@@ -73,7 +81,7 @@ def _marked(lab: Lab, files: list[Path | str | RawFile], out: Path) -> RawFile:
     if out.exists():
         raise CallError("there is a file here already", where=str(out), advice="name another with --mark")
     raw = files[0] if isinstance(files[0], RawFile) else load(files[0])
-    found = lab.take([raw], check_only=True).intake
+    found = lab.take([raw], check_only=True, only_map=only_map).intake
     if found.findings:
         out.write_bytes(marked_copy(raw, found))
         marks = f"{len(found.findings)} finding{'s' if len(found.findings) > 1 else ''} marked"

@@ -52,7 +52,13 @@ def choose_layout(ways: Sequence[Table], maps: Sequence[HeadingMap], book: Findi
             return table, layout_of(form, number, headings, dict(rows).get(number + 1, ()))
         if fitting:
             names = ", ".join(repr(form.name) for form, _, _ in fitting)
-            book.add(fitting[0][1], None, None, f"several maps fit these headings: {names}", "say which one is meant")
+            book.add(
+                fitting[0][1],
+                None,
+                None,
+                f"several maps fit these headings: {names}",
+                "say which one is meant: --map NAME",
+            )
             return None
     return None
 

@@ -19,6 +19,7 @@ from sameline.records import (
     amendments,
     comparisons,
     conclusion_signatures,
+    heading_maps,
     registry,
     reversal,
     run_particulars,
@@ -31,6 +32,7 @@ from sameline.records.moments import read_zone, utc_text
 from sameline.records.store import Reading, Store
 
 if TYPE_CHECKING:
+    from sameline.intake.headings import HeadingMap
     from sameline.intake.rawfiles import RawFile
     from sameline.ledger.checkpoint import Checkpoint
     from sameline.ledger.signatures import SigningKey
@@ -109,6 +111,7 @@ class Lab(Reads):
         check_only: bool = False,
         as_they_stand: bool = False,
         good_runs: Path | None = None,
+        only_map: str | None = None,
         progress: Callable[[str, int], None] | None = None,
     ) -> Taken:
         """Take in files: every run of every file that is not recorded yet, or none.
@@ -119,6 +122,7 @@ class Lab(Reads):
             as_they_stand: record runs with values that were asked about (far from all recorded, for example).
             good_runs: record the runs without a fault, and write what is left of each file into this folder, to be
                 mended.
+            only_map: name of the heading map to read with, where several fit; all that are kept if left out.
             progress: told the file's name and the rows read now and then.
 
         Raises:
@@ -129,8 +133,9 @@ class Lab(Reads):
 
         opened = [path if isinstance(path, RawFile) else load(path) for path in paths]
         self._refuse_known([raw.source() for raw in opened])
+        maps = taking.chosen_maps([form for _, form in self.maps()], only_map)
         with self.reading() as reading:
-            seen = taking.examine(reading, self._clock(), opened, progress)
+            seen = taking.examine(reading, self._clock(), opened, maps, progress)
         taken = Taken(seen.intake, seen.facts, seen.passed)
         if check_only:
             return taken
@@ -143,6 +148,17 @@ class Lab(Reads):
             taking.remove(rest)
             raise
         return replace(taken, outcomes=outcomes, rest=rest)
+
+    def keep_map(self, form: HeadingMap, *, reason: str | None = None) -> Outcome:
+        """Keep a heading map under its name: `take` reads files with its headings from now on.
+
+        Raises:
+            CallError: the map has no name or does not say all that is needed, or it is kept already.
+        """
+        form.check()
+        with self._act("map", reason) as act:
+            heading_maps.keep_map(act, form.name, form.to_json())
+        return Outcome(act.number)
 
     def amend(self, measurement: Measurement, value: DraftMeasurement, *, reason: str) -> Outcome:
         """Correct a recorded value; the original stays readable."""

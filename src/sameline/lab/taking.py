@@ -39,10 +39,23 @@ class Examined:
     maps: Sequence[HeadingMap] = ()
 
 
+def chosen_maps(maps: Sequence[HeadingMap], name: str | None) -> Sequence[HeadingMap]:
+    """All kept maps, or the one of this name.
+
+    Raises:
+        CallError: none is kept under it.
+    """
+    chosen = [form for form in maps if name in (None, form.name)]
+    if name is not None and not chosen:
+        raise CallError(f"no heading map is kept as {name!r}", advice="`sameline map list` shows what is")
+    return chosen
+
+
 def examine(
     reading: Reading,
     now: str,
     raws: Sequence[RawFile],
+    maps: Sequence[HeadingMap] = (),
     progress: Callable[[str, int], None] | None = None,
 ) -> Examined:
     """Read files and recognise in them what is recorded.
@@ -54,14 +67,14 @@ def examine(
     if twice:
         raise CallError(f"two of the files are named {twice[0]}", advice="take them in one after the other")
     register = replace(read_register(reading, now), runs=frozenset())  # recognised below, run for run
-    found = read_files(raws, register, progress=progress)
+    found = read_files(raws, register, maps=maps, progress=progress)
     known = read_known_runs(reading, keys_of(found))
     facts = {code: register.characteristics[code] for code in {run.characteristic for run in found.runs}}
     if not known:
-        return Examined(found, facts, ())
+        return Examined(found, facts, (), maps)
     drafts = {key: [KnownRun(entry, run) for entry, run in held] for key, held in known.items()}
     recognised = recognise(found, drafts)
-    return Examined(_without_known(found, recognised), facts, _passed(recognised))
+    return Examined(_without_known(found, recognised), facts, _passed(recognised), maps)
 
 
 def _without_known(found: Intake, recognised: Recognition) -> Intake:

@@ -12,7 +12,7 @@ from sameline.resources import migrations_folder
 if TYPE_CHECKING:
     from alembic.config import Config
 
-REVISIONS = ("0001", "0002")
+REVISIONS = ("0001", "0002", "0003")
 """Every revision a store may have, oldest first; the last is this Sameline's."""
 
 

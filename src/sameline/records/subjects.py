@@ -133,9 +133,14 @@ def _files() -> Select[Any]:
     return select(t.source_file.c.entry, t.source_file.c.name)
 
 
+def _maps() -> Select[Any]:
+    return select(t.heading_map.c.entry, t.heading_map.c.name)
+
+
 _QUESTIONS: dict[str, tuple[Callable[[], Select[Any]], Callable[[Row[Any]], str]]] = {
     **{f"{kind}_particulars": _registered(kind) for kind in KINDS},
     "source_file": (_files, lambda row: f"file {row.name}"),
+    "heading_map": (_maps, lambda row: f"map {row.name}"),
     "run": (_runs, lambda row: f"{row.what} of {row.code}"),
     "measurement_amendment": (
         _amended_values,
