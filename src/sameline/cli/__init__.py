@@ -24,6 +24,7 @@ from sameline.cli import (
     recorded,
     register,
     setup,
+    sheet,
     tour,
 )
 from sameline.errors import FindingsError, SamelineError
@@ -40,7 +41,23 @@ app = typer.Typer(
 STOPPED = 130
 """The exit code where a person stopped the command."""
 
-for group in (setup, register, bench, files, maps, recorded, correct, ask, plan, picture, conform, audit, keep, tour):
+for group in (
+    setup,
+    register,
+    bench,
+    sheet,
+    files,
+    maps,
+    recorded,
+    correct,
+    ask,
+    plan,
+    picture,
+    conform,
+    audit,
+    keep,
+    tour,
+):
     group.add_to(app)
 
 

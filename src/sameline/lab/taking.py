@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING
 
 from sameline.errors import CallError, FindingsError
 from sameline.intake.files import Intake, read_files
+from sameline.intake.forms import with_forms
 from sameline.intake.recognise import KnownRun, Recognition, keys_of, recognise
 from sameline.intake.rest import rest_files
 from sameline.records.known_runs import read_known_runs
@@ -67,6 +68,7 @@ def examine(
     if twice:
         raise CallError(f"two of the files are named {twice[0]}", advice="take them in one after the other")
     register = replace(read_register(reading, now), runs=frozenset())  # recognised below, run for run
+    maps = with_forms(maps, raws)
     found = read_files(raws, register, maps=maps, progress=progress)
     known = read_known_runs(reading, keys_of(found))
     facts = {code: register.characteristics[code] for code in {run.characteristic for run in found.runs}}
