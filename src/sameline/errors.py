@@ -53,6 +53,10 @@ class FindingsError(SamelineError):
         self.findings = findings
 
 
+class KnownAlreadyError(FindingsError):
+    """Everything that the input holds is recorded already."""
+
+
 class CheckFailedError(SamelineError):
     """A check was made and the answer is no."""
 

@@ -26,6 +26,7 @@ from sameline.cli import (
     setup,
     sheet,
     tour,
+    watch,
 )
 from sameline.errors import FindingsError, SamelineError
 
@@ -48,6 +49,7 @@ for group in (
     sheet,
     files,
     maps,
+    watch,
     recorded,
     correct,
     ask,

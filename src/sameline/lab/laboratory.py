@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING, Any, Self
 
 from sameline.conclusions.conclude import bring_up_to_date
 from sameline.conclusions.statements import check
-from sameline.errors import CallError, FindingsError
+from sameline.errors import CallError, KnownAlreadyError
 from sameline.lab.corrections import touched_by_amending_runs, touched_by_reversal
 from sameline.lab.outcomes import Outcome, Taken, by_source, refuse
 from sameline.lab.reads import Reads
@@ -296,8 +296,8 @@ class Lab(Reads):
         scope.touch(act, touched)
 
 
-def _taken_already(source: SourceFile, known: tuple[int, str]) -> FindingsError:
-    return FindingsError(
+def _taken_already(source: SourceFile, known: tuple[int, str]) -> KnownAlreadyError:
+    return KnownAlreadyError(
         f"this file was taken in already, as {known[1]}",
         [],
         where=source.name,

@@ -8,7 +8,7 @@ from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from sameline.errors import CallError, FindingsError
+from sameline.errors import CallError, KnownAlreadyError
 from sameline.intake.files import Intake, read_files
 from sameline.intake.forms import with_forms
 from sameline.intake.recognise import KnownRun, Recognition, keys_of, recognise
@@ -101,10 +101,10 @@ def refuse_nothing_new(examined: Examined) -> None:
     """Refuse files of which every run is recorded.
 
     Raises:
-        FindingsError: there is nothing to record.
+        KnownAlreadyError: there is nothing to record.
     """
     if examined.passed and not examined.intake.runs:
-        raise FindingsError("there is nothing new to record", list(examined.passed))
+        raise KnownAlreadyError("there is nothing new to record", list(examined.passed))
 
 
 def write_rest(raws: Sequence[RawFile], examined: Examined, folder: Path) -> tuple[Path, ...]:
