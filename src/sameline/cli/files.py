@@ -52,7 +52,10 @@ def take(
     store: StoreOption = DEFAULT_STORE,
     by: ByOption = None,
 ) -> None:
-    """Take in files of results: every run of a file that is not recorded yet, or none."""
+    """Take in files of results: every new run, or none.
+
+    Runs that are recorded already are passed over.
+    """
     with open_store(store, by) as lab:
         opened = _opened(files)
         if mark is not None:

@@ -31,7 +31,7 @@ def sheet(
     out: Annotated[Path, typer.Option(help="The XLSX file to write.")] = Path("entry-form.xlsx"),
     store: StoreOption = DEFAULT_STORE,
 ) -> None:
-    """Write an entry form as a workbook: fill it in and take it in, no map needed."""
+    """Write an entry form to be filled in and taken in."""
     from sameline.reports.entry_form import entry_form
 
     if out.exists():

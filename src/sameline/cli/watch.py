@@ -31,7 +31,10 @@ def watch(
     store: StoreOption = DEFAULT_STORE,
     by: ByOption = None,
 ) -> None:
-    """Take in the files dropped into a folder: those recorded go to taken/, those with findings to held/."""
+    """Take in the files dropped into a folder.
+
+    Those that are recorded go to taken/, those with findings to held/.
+    """
     from sameline.lab.watching import Folder, make_folder
 
     if Path(store).is_file() and Path(store).resolve().parent == folder.resolve():
