@@ -96,4 +96,4 @@ def test_every_file_taken_in_is_one_document(answered):
     documents = answered.done("take", first, second, "--json").document
     assert [document["runs"] for document in documents] == [[5], [6]]
     checked = answered.done("take", answered.file("c.csv", ["B-1,TS,2026-03-01,1,12.0"]), "--check", "--json").document
-    assert checked == {"runs": 1, "findings": []}
+    assert checked == {"runs": 1, "recorded_already": [], "findings": []}

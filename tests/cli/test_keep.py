@@ -98,7 +98,7 @@ def test_a_run_s_particulars_are_restated_and_its_values_stay(call):
 def test_a_conclusion_is_signed_by_two_and_a_later_version_is_not(call, tmp_path):
     for person in ("ana", "ben"):
         call("key", "make", tmp_path / f"{person}.pem", "--by", person)
-    sign = ("sign", "batches", "--key")
+    sign = ("sign", "suppliers", "--key")
     early = call(*sign, tmp_path / "ben.pem", "--as", "approved", code=2)
     assert "nobody has signed" in early.err
     call(*sign, tmp_path / "ana.pem", "--as", "prepared", "--by", "ana")
@@ -107,14 +107,14 @@ def test_a_conclusion_is_signed_by_two_and_a_later_version_is_not(call, tmp_path
     call(*sign, tmp_path / "ben.pem", "--as", "approved")
     assert "another person" in call(*sign, tmp_path / "ben.pem", "--as", "reviewed", code=2).err
     assert "somebody else" not in call(*sign, tmp_path / "ana.pem", "--as", "reviewed", code=2).out
-    signed = json.loads(call("differ", "batches", "--json").out)
+    signed = json.loads(call("differ", "suppliers", "--json").out)
     assert [(s["version"], s["meaning"], s["person"]) for s in signed["signatures"]] == [
         (signed["version"], "prepared", "ana"),
         (signed["version"], "approved", "ben"),
     ]
-    assert "Signed as approved by Ben Okoro" in call("differ", "batches").out
+    assert "Signed as approved by Ben Okoro" in call("differ", "suppliers").out
     call("amend", "70.5", "--run", "1", "--replicate", "1", "--reason", "misread")
-    assert "NOT SIGNED" in call("differ", "batches").out
+    assert "NOT SIGNED" in call("differ", "suppliers").out
     call("verify")
 
 

@@ -145,7 +145,7 @@ def test_a_verdict_would_turn_with_the_excluded_values_put_back(lab: Lab):
     answer = latest(lab).answer
     assert answer.replicates == 8
     text = caution(answer, "set aside")
-    assert "1 value of 1 run are set aside" in text
+    assert "1 value of 1 run is set aside" in text
     assert "would turn" in text or "no verdict would turn" in text
 
 

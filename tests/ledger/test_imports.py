@@ -18,4 +18,4 @@ print(sorted(loaded - sys.stdlib_module_names))
 print(sorted(name for name in sys.modules if name.startswith("sameline.") and "ledger" not in name))
 """
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
-    assert done.stdout.splitlines() == ["['sameline']", "['sameline.errors']"]
+    assert done.stdout.splitlines() == ["['sameline']", "['sameline.errors', 'sameline.version']"]
