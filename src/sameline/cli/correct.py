@@ -22,7 +22,7 @@ from sameline.errors import CallError
 
 CAUSE_WORDS = (
     "instrument fault, specimen damaged, wrong specimen, method not followed, conditions out of range, "
-    "transcription error, or other stated cause"
+    "copying error, or other stated cause"
 )
 
 Run = Annotated[int | None, typer.Option("--run", help="Number of the run.")]

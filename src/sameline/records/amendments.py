@@ -18,7 +18,7 @@ CAUSES = (
     "wrong specimen",
     "method not followed",
     "conditions out of range",
-    "transcription error",
+    "copying error",
     "other stated cause",
 )
 """The assignable causes for which something may be set aside; the reason says the rest in words."""
