@@ -26,7 +26,7 @@ class Packed:
 
     def __init__(self, data: bytes, limit: int) -> None:
         self._data = data
-        try:
+        try:  # zipfile says NotImplementedError of a way of packing that it does not know
             self._archive = zipfile.ZipFile(io.BytesIO(data))
             members = self._archive.infolist()
         except (zipfile.BadZipFile, ValueError, OSError, NotImplementedError, OverflowError) as error:
@@ -71,7 +71,7 @@ class Packed:
         Raises:
             UnreadableError: there is none of this name, or it is damaged.
         """
-        try:
+        try:  # here too NotImplementedError is zipfile's word for an unknown way of packing
             return self._archive.read(name)
         except (KeyError, zipfile.BadZipFile, zlib.error, EOFError, OSError, ValueError, NotImplementedError) as error:
             raise UnreadableError("the workbook is damaged", _DAMAGED) from error
